@@ -1,0 +1,130 @@
+package classify
+
+import (
+	"cmp"
+	"fmt"
+	"slices"
+
+	"catena/classify/rulebook"
+	"catena/classify/text"
+	"catena/ingest/corpus"
+)
+
+// Classifier runs one rule book.
+type Classifier struct {
+	book *rulebook.Book
+}
+
+// New returns a classifier for a book.
+func New(book *rulebook.Book) *Classifier { return &Classifier{book} }
+
+// Version names the book together with the engine that runs it.
+func (c *Classifier) Version() string {
+	return fmt.Sprintf("%s.%d", c.book.Version, EngineVersion)
+}
+
+// Book is the rule book behind the classifier.
+func (c *Classifier) Book() *rulebook.Book { return c.book }
+
+// hit is a tag with what ordering needs to know of its place.
+type hit struct {
+	corpus.Tag
+	sentence int
+	match    rulebook.Match
+}
+
+// Tag finds the factors of an occurrence and its chain. Tags are in order of
+// narrative and place; Tags and Chain.Links are never nil.
+func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
+	out := corpus.Tagged{Occurrence: *o, Rulebook: c.Version(), Tags: []corpus.Tag{}}
+	var told []telling
+	for n, narrative := range o.Narratives {
+		d := c.book.Lexicon.Analyse(narrative.Text)
+		hits := c.narrative(d, narrative.Kind)
+		for i := range hits {
+			hits[i].Narrative = n
+		}
+		told = append(told, telling{narrative.Kind, len(out.Tags), c.inTime(d, hits)})
+		for _, h := range hits {
+			out.Tags = append(out.Tags, h.Tag)
+		}
+	}
+	out.Chain = c.chain(out.Tags, told)
+	return out
+}
+
+// narrative finds the tags of one text, in order of place.
+func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
+	var hits []hit
+	for n, s := range d.Sentences {
+		from := len(hits)
+		c.book.FindRules(d, s, func(r *rulebook.Rule, m rulebook.Match) {
+			if c.holds(r, d, n) {
+				hits = append(hits, hit{
+					Tag: corpus.Tag{
+						Factor: r.Factor, Basis: corpus.Told, Span: m.Shown, Quote: m.Shown.Of(d.Text),
+						Rule: r.ID, Strength: r.Strength, Side: side(c.book.Lexicon, r, d, s, m),
+					},
+					sentence: n, match: m,
+				})
+			}
+		})
+		if len(hits) == from {
+			continue
+		}
+		cues := c.cues(d, s)
+		for i := from; i < len(hits); i++ {
+			hits[i].Assertion = assertion(cues, hits[i].match, kind)
+		}
+		hits = append(hits[:from], distinct(hits[from:])...)
+	}
+	return hits
+}
+
+// holds checks the conditions of a rule around sentence n.
+func (c *Classifier) holds(r *rulebook.Rule, d *text.Doc, n int) bool {
+	s := d.Sentences[n]
+	if len(r.Unless) > 0 && rulebook.Stands(r.Unless, d, s) {
+		return false
+	}
+	if len(r.With) > 0 && !rulebook.Stands(r.With, d, s) {
+		return false
+	}
+	if len(r.Near) > 0 {
+		near := false
+		for k := max(0, n-1); k <= min(n+1, len(d.Sentences)-1) && !near; k++ {
+			near = rulebook.Stands(r.Near, d, d.Sentences[k])
+		}
+		if !near {
+			return false
+		}
+	}
+	if len(r.Nowhere) > 0 {
+		for _, s := range d.Sentences {
+			if rulebook.Stands(r.Nowhere, d, s) {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// distinct keeps, of overlapping hits of one factor, the strongest and of
+// equally strong ones the shortest, and puts what is left in order of place.
+func distinct(hits []hit) []hit {
+	slices.SortStableFunc(hits, func(a, b hit) int {
+		return cmp.Or(
+			cmp.Compare(b.Strength, a.Strength), cmp.Compare(a.Len(), b.Len()),
+			cmp.Compare(a.Start, b.Start), cmp.Compare(a.Rule, b.Rule))
+	})
+	var kept []hit
+	for _, h := range hits {
+		if !slices.ContainsFunc(kept, func(k hit) bool { return k.Factor == h.Factor && k.Overlaps(h.Span) }) {
+			kept = append(kept, h)
+		}
+	}
+	slices.SortStableFunc(kept, func(a, b hit) int {
+		return cmp.Or(cmp.Compare(a.Start, b.Start), cmp.Compare(a.End, b.End), cmp.Compare(a.Factor, b.Factor))
+	})
+	return kept
+}

@@ -1,0 +1,538 @@
+package rulebook
+
+import (
+	"cmp"
+	"crypto/sha256"
+	"embed"
+	"encoding/hex"
+	"errors"
+	"fmt"
+	"io/fs"
+	"path"
+	"slices"
+	"strings"
+	"sync"
+
+	"github.com/goccy/go-yaml"
+	"github.com/goccy/go-yaml/ast"
+
+	"catena/classify/catalogue"
+	"catena/classify/text"
+	"catena/ingest/corpus"
+)
+
+// Book is a compiled rule book. It does not change after Load.
+type Book struct {
+	Version string // hash of all that the book holds, 12 hexadecimal digits
+	Tree    *catalogue.Tree
+	Lexicon *text.Lexicon
+	Rules   []*Rule
+	Cues    []*Cue
+	Turns   []*Pattern // words after which the earlier event is told
+
+	rules index[*Rule]
+	cues  index[*Cue]
+	turns index[struct{}]
+	terms map[string]*term
+}
+
+// Rule finds one factor.
+type Rule struct {
+	ID       string // factor/name
+	Factor   string
+	Says     string // what it means that this rule found something
+	Hash     string // of the rule with every term that it uses
+	Strength float64
+	Side     string // "engine" or "rudder": whose side the words around tell
+	Look     []*Pattern
+	With     []*Pattern // one of these must stand in the same sentence
+	Unless   []*Pattern // none of these may stand in the same sentence
+	Near     []*Pattern // one of these must stand in the same or a neighbouring sentence
+	Nowhere  []*Pattern // none of these may stand anywhere in the narrative
+	Examples []Example
+	File     string
+	Line     int
+}
+
+// Example is a text that a rule must, or must not, find its factor in.
+type Example struct {
+	Text  string
+	Shown corpus.Span      // what must be highlighted; empty where not said
+	Want  corpus.Assertion // "" where the rule must not match at all
+	File  string
+	Line  int
+}
+
+// Cue is words that tell how what stands near them is spoken of.
+type Cue struct {
+	Sense Sense
+	Reach Reach
+	Words int // how many words it reaches
+	Look  []*Pattern
+}
+
+// Sense is what a cue says of the factors in its reach.
+type Sense string
+
+// The senses beyond the four assertions: Nothing marks words that look like a
+// cue and are none ("not only"), and End words that end the reach of others.
+const (
+	Nothing Sense = "nothing"
+	End     Sense = "end"
+)
+
+// Reach is the direction in which a cue works.
+type Reach string
+
+// The directions. Sentence reaches over the whole sentence.
+const (
+	Forward  Reach = "forward"
+	Backward Reach = "backward"
+	Whole    Reach = "sentence"
+)
+
+// Fault is an error in a rule file.
+type Fault struct {
+	File string
+	Line int
+	Text string
+}
+
+func (f *Fault) Error() string { return fmt.Sprintf("%s:%d: %s", f.File, f.Line, f.Text) }
+
+type termState uint8
+
+const (
+	unseen termState = iota
+	expanding
+	expanded
+)
+
+type term struct {
+	source  []located
+	file    string
+	line    int
+	state   termState
+	phrases [][]text.Word
+	uses    map[string]bool
+}
+
+// located is a string of a rule file with the line that it stands on.
+type located struct {
+	text string
+	line int
+}
+
+// UnmarshalYAML keeps the line of the node.
+func (l *located) UnmarshalYAML(n ast.Node) error {
+	l.line = n.GetToken().Position.Line
+	switch v := n.(type) {
+	case *ast.StringNode:
+		l.text = v.Value
+	case *ast.LiteralNode:
+		l.text = strings.TrimRight(v.Value.Value, "\n")
+	default:
+		return fmt.Errorf("line %d: want text here; put it in quotes", l.line)
+	}
+	return nil
+}
+
+type fileYAML struct {
+	Terms  map[string][]located `yaml:"terms"`
+	Factor located              `yaml:"factor"`
+	Rules  []ruleYAML           `yaml:"rules"`
+	Cues   []cueYAML            `yaml:"cues"`
+	Order  []located            `yaml:"order"`
+}
+
+type ruleYAML struct {
+	Name      located   `yaml:"rule"`
+	Factor    string    `yaml:"factor"` // where it differs from the file's
+	Says      string    `yaml:"says"`
+	Strength  float64   `yaml:"strength"`
+	Side      string    `yaml:"side"`
+	Off       bool      `yaml:"off"`
+	Look      []located `yaml:"look for"`
+	With      []located `yaml:"with"`
+	Unless    []located `yaml:"unless"`
+	Near      []located `yaml:"near"`
+	Nowhere   []located `yaml:"nowhere"`
+	Match     []located `yaml:"match"`
+	NoMatch   []located `yaml:"no match"`
+	Denied    []located `yaml:"denied"`
+	Possible  []located `yaml:"possible"`
+	Advised   []located `yaml:"advised"`
+	Elsewhere []located `yaml:"elsewhere"`
+}
+
+type cueYAML struct {
+	Sense Sense     `yaml:"sense"`
+	Reach Reach     `yaml:"reach"`
+	Words int       `yaml:"words"`
+	Look  []located `yaml:"look for"`
+}
+
+//go:embed book/*.yaml
+var files embed.FS
+
+// Builtin returns the book that ships with the program.
+var Builtin = sync.OnceValues(func() (*Book, error) { return Load(catalogue.Builtin()) })
+
+// Load reads the built-in book and, over it, the rule files (*.yaml) of each
+// further folder: a term or a rule of the same name replaces the earlier one.
+// The error joins every fault that was found.
+func Load(tree *catalogue.Tree, folders ...fs.FS) (*Book, error) {
+	l := &loader{
+		book:  &Book{Tree: tree, Lexicon: text.NewLexicon(), terms: map[string]*term{}},
+		rules: map[string]*ruleYAML{}, files: map[string]string{}, hash: sha256.New().Sum(nil),
+	}
+	builtin, err := fs.Sub(files, "book")
+	if err != nil {
+		return nil, err
+	}
+	for _, folder := range append([]fs.FS{builtin}, folders...) {
+		if err := l.read(folder); err != nil {
+			return nil, err
+		}
+	}
+	l.compile()
+	if len(l.faults) > 0 {
+		return nil, errors.Join(l.faults...)
+	}
+	return l.book, nil
+}
+
+type loader struct {
+	book   *Book
+	rules  map[string]*ruleYAML
+	files  map[string]string // rule id -> file
+	cues   []fileYAML
+	names  []string // files, in order, beside cues
+	hash   []byte
+	faults []error
+}
+
+func (l *loader) fault(file string, line int, format string, args ...any) {
+	l.faults = append(l.faults, &Fault{file, line, fmt.Sprintf(format, args...)})
+}
+
+func (l *loader) read(folder fs.FS) error {
+	names, err := fs.Glob(folder, "*.yaml")
+	if err != nil {
+		return fmt.Errorf("list rule files: %w", err)
+	}
+	slices.Sort(names)
+	for _, name := range names {
+		data, err := fs.ReadFile(folder, name)
+		if err != nil {
+			return fmt.Errorf("read rule file: %w", err)
+		}
+		if len(data) > 1<<20 {
+			return &Fault{name, 1, "a rule file may hold 1 MiB at most"}
+		}
+		sum := sha256.New()
+		sum.Write(l.hash)
+		sum.Write([]byte(path.Base(name)))
+		sum.Write(data)
+		l.hash = sum.Sum(nil)
+		var file fileYAML
+		if err := yaml.UnmarshalWithOptions(data, &file, yaml.Strict()); err != nil {
+			l.fault(name, yamlLine(err), "%s", strings.TrimSpace(yaml.FormatError(err, false, true)))
+			continue
+		}
+		l.add(name, file)
+	}
+	return nil
+}
+
+// yamlLine finds the line of a YAML error, 1 where it does not tell.
+func yamlLine(err error) int {
+	var e yaml.Error
+	if errors.As(err, &e) && e.GetToken() != nil {
+		return e.GetToken().Position.Line
+	}
+	return 1
+}
+
+func (l *loader) add(name string, file fileYAML) {
+	for key, phrases := range file.Terms {
+		line := 1
+		if len(phrases) > 0 {
+			line = phrases[0].line
+		}
+		if strings.ContainsAny(key, " {}()|?") {
+			l.fault(name, line, "term %q: a name is one word, with hyphens at most", key)
+			continue
+		}
+		l.book.terms[key] = &term{source: phrases, file: name, line: line}
+	}
+	for i := range file.Rules {
+		r := &file.Rules[i]
+		if r.Factor == "" {
+			r.Factor = file.Factor.text
+		}
+		id := r.Factor + "/" + r.Name.text
+		switch _, known := l.book.Tree.Factor(r.Factor); {
+		case r.Name.text == "":
+			l.fault(name, max(1, file.Factor.line), "a rule without a name (rule: ...)")
+		case !known:
+			l.fault(name, r.Name.line, "rule %q: the catalogue has no factor %q", r.Name.text, r.Factor)
+		case l.files[id] == name && l.rules[id] != nil:
+			l.fault(name, r.Name.line, "rule %q stands twice in this file", id)
+		default:
+			l.rules[id], l.files[id] = r, name
+		}
+	}
+	l.cues, l.names = append(l.cues, file), append(l.names, name)
+}
+
+func (l *loader) compile() {
+	b := l.book
+	b.Version = hex.EncodeToString(l.hash)[:12]
+	c := &compiler{lexicon: b.Lexicon, terms: b.terms, used: map[string]bool{}}
+	ids := make([]string, 0, len(l.rules))
+	for id := range l.rules {
+		ids = append(ids, id)
+	}
+	slices.Sort(ids)
+	for _, id := range ids {
+		if y := l.rules[id]; !y.Off {
+			b.Rules = append(b.Rules, l.rule(c, id, l.files[id], y))
+		}
+	}
+	for i, f := range l.cues {
+		for _, y := range f.Cues {
+			b.Cues = append(b.Cues, l.cue(c, l.names[i], y))
+		}
+		b.Turns = append(b.Turns, l.patterns(c, l.names[i], f.Order)...)
+	}
+	// terms that no rule uses are compiled all the same, so that their faults show
+	for name := range b.terms {
+		if _, err := c.term(name); err != nil {
+			l.termFault(name, err)
+		}
+	}
+	size := b.Lexicon.Size()
+	b.rules, b.cues, b.turns = newIndex[*Rule](size), newIndex[*Cue](size), newIndex[struct{}](size)
+	for _, r := range b.Rules {
+		b.rules.add(r, r.Look)
+	}
+	for _, cue := range b.Cues {
+		b.cues.add(cue, cue.Look)
+	}
+	b.turns.add(struct{}{}, b.Turns)
+	slices.SortFunc(l.faults, func(a, b error) int { return cmp.Compare(a.Error(), b.Error()) })
+	l.faults = slices.CompactFunc(l.faults, func(a, b error) bool { return a.Error() == b.Error() })
+}
+
+func (l *loader) termFault(name string, err error) {
+	var f *Fault
+	if errors.As(err, &f) {
+		l.faults = append(l.faults, f)
+		return
+	}
+	t := l.book.terms[name]
+	l.fault(t.file, t.line, "%v", err)
+}
+
+func (l *loader) patterns(c *compiler, file string, sources []located) []*Pattern {
+	var out []*Pattern
+	for _, s := range sources {
+		p, err := c.pattern(s.text)
+		var f *Fault
+		switch {
+		case errors.As(err, &f):
+			l.faults = append(l.faults, f)
+		case err != nil:
+			l.fault(file, s.line, "%v", err)
+		default:
+			out = append(out, p)
+		}
+	}
+	return out
+}
+
+func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
+	r := &Rule{
+		ID: id, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
+		File: file, Line: y.Name.line,
+	}
+	if r.Strength < 0 || r.Strength > 1 {
+		l.fault(file, r.Line, "rule %q: strength %g is not between 0 and 1", id, r.Strength)
+	}
+	if r.Side != "" && r.Side != "engine" && r.Side != "rudder" {
+		l.fault(file, r.Line, "rule %q: side %q: want engine or rudder", id, r.Side)
+	}
+	clear(c.used)
+	for _, part := range []struct {
+		into *[]*Pattern
+		from []located
+	}{{&r.Look, y.Look}, {&r.With, y.With}, {&r.Unless, y.Unless}, {&r.Near, y.Near}, {&r.Nowhere, y.Nowhere}} {
+		*part.into = l.patterns(c, file, part.from)
+	}
+	if len(y.Look) == 0 {
+		l.fault(file, r.Line, "rule %q looks for nothing (look for: ...)", id)
+	}
+	r.Hash = l.ruleHash(y, id, c.used)
+	for _, group := range []struct {
+		want corpus.Assertion
+		from []located
+	}{
+		{corpus.Affirmed, y.Match}, {"", y.NoMatch}, {corpus.Denied, y.Denied},
+		{corpus.Possible, y.Possible}, {corpus.Advised, y.Advised}, {corpus.Elsewhere, y.Elsewhere},
+	} {
+		for _, s := range group.from {
+			r.Examples = append(r.Examples, example(s, group.want, file))
+		}
+	}
+	if len(y.Match) == 0 {
+		l.fault(file, r.Line, "rule %q has no example that must match (match: ...)", id)
+	}
+	return r
+}
+
+// ruleHash covers everything that decides what the rule finds: its own
+// patterns and each term below them.
+func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
+	h := sha256.New()
+	fmt.Fprintf(h, "%s|%g|%s", id, y.Strength, y.Side)
+	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere} {
+		fmt.Fprint(h, "\n--")
+		for _, s := range part {
+			fmt.Fprint(h, "\n", s.text)
+		}
+	}
+	names := make([]string, 0, len(used))
+	for name := range used {
+		names = append(names, name)
+	}
+	slices.Sort(names)
+	for _, name := range names {
+		fmt.Fprint(h, "\n=", name)
+		for _, s := range l.book.terms[name].source {
+			fmt.Fprint(h, "\n", s.text)
+		}
+	}
+	return hex.EncodeToString(h.Sum(nil))[:12]
+}
+
+// example cuts the marks [ and ] out of a text and keeps what they enclose.
+func example(s located, want corpus.Assertion, file string) Example {
+	e := Example{Text: s.text, Want: want, File: file, Line: s.line}
+	if from := strings.IndexByte(s.text, '['); from >= 0 {
+		if to := strings.IndexByte(s.text, ']'); to > from {
+			e.Text = s.text[:from] + s.text[from+1:to] + s.text[to+1:]
+			e.Shown = corpus.Span{Start: from, End: to - 1}
+		}
+	}
+	return e
+}
+
+func (l *loader) cue(c *compiler, file string, y cueYAML) *Cue {
+	line := 1
+	if len(y.Look) > 0 {
+		line = y.Look[0].line
+	}
+	switch y.Sense {
+	case Sense(corpus.Denied), Sense(corpus.Possible), Sense(corpus.Advised), Sense(corpus.Elsewhere), Nothing, End:
+	default:
+		l.fault(file, line, "cue: no such sense %q", y.Sense)
+	}
+	switch y.Reach {
+	case "":
+		y.Reach = Forward
+	case Forward, Backward, Whole:
+	default:
+		l.fault(file, line, "cue: no such reach %q", y.Reach)
+	}
+	return &Cue{Sense: y.Sense, Reach: y.Reach, Words: cmp.Or(y.Words, 8), Look: l.patterns(c, file, y.Look)}
+}
+
+// index finds, by the word at hand, the patterns that can begin with it.
+type index[T any] [][]entry[T]
+
+type entry[T any] struct {
+	owner   T
+	pattern *Pattern
+}
+
+func newIndex[T any](size int) index[T] { return make(index[T], size) }
+
+func (x index[T]) add(owner T, patterns []*Pattern) {
+	for _, p := range patterns {
+		for _, w := range p.first {
+			x[w] = append(x[w], entry[T]{owner, p})
+		}
+	}
+}
+
+// FindRules calls found for every place in the sentence where a rule's
+// pattern matches.
+func (b *Book) FindRules(d *text.Doc, s text.Sentence, found func(*Rule, Match)) {
+	find(b.rules, d, s, found)
+}
+
+// FindCues calls found for every cue in the sentence.
+func (b *Book) FindCues(d *text.Doc, s text.Sentence, found func(*Cue, Match)) {
+	find(b.cues, d, s, found)
+}
+
+// FindTurns calls found for every word in the sentence after which something
+// earlier is told.
+func (b *Book) FindTurns(d *text.Doc, s text.Sentence, found func(Match)) {
+	find(b.turns, d, s, func(_ struct{}, m Match) { found(m) })
+}
+
+func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match)) {
+	for i := s.First; i < s.Last; i++ {
+		for _, e := range x[d.Tokens[i].Word] {
+			if m, ok := e.pattern.MatchAt(d, i, s.Last); ok {
+				found(e.owner, m)
+			}
+		}
+	}
+}
+
+// Stands tells whether one of the patterns matches anywhere in the sentence.
+func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
+	for _, p := range patterns {
+		for i := s.First; i < s.Last; i++ {
+			if slices.Contains(p.first, d.Tokens[i].Word) {
+				if _, ok := p.MatchAt(d, i, s.Last); ok {
+					return true
+				}
+			}
+		}
+	}
+	return false
+}
+
+// UnusedTerms lists the terms that no rule, cue or other term uses.
+func (b *Book) UnusedTerms() []string {
+	used := map[string]bool{}
+	for _, t := range b.terms {
+		for u := range t.uses {
+			used[u] = true
+		}
+	}
+	var out []string
+	for name := range b.terms {
+		if !used[name] && !b.mentions(name) {
+			out = append(out, name)
+		}
+	}
+	slices.Sort(out)
+	return out
+}
+
+func (b *Book) mentions(name string) bool {
+	has := func(ps []*Pattern) bool {
+		return slices.ContainsFunc(ps, func(p *Pattern) bool { return strings.Contains(p.Source, "{"+name+"}") })
+	}
+	for _, r := range b.Rules {
+		if has(r.Look) || has(r.With) || has(r.Unless) || has(r.Near) || has(r.Nowhere) {
+			return true
+		}
+	}
+	return has(b.Turns) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
+}

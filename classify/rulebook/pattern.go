@@ -1,0 +1,497 @@
+package rulebook
+
+import (
+	"fmt"
+	"strconv"
+	"strings"
+
+	"catena/classify/text"
+	"catena/ingest/corpus"
+)
+
+// Pattern is a compiled sequence of words to look for within one sentence:
+//
+//	word        that word, in any spelling that the spelling table knows
+//	lose~       any form of it: lose, loses, lost, losing
+//	stall:verb  the word where it is a verb (also :noun)
+//	{engine}    any phrase of the term
+//	(a|b c)     one of these
+//	x?          x or nothing (x a word, a term or a group)
+//	..  ..5     up to 3 (5) words, none beyond a comma
+//	...  ...9   up to 6 (9) words, commas or not
+//	#  *        a number; any one word
+//	[ ... ]     what to highlight, if not all of it
+//
+// A Pattern does not change after it is compiled and may be shared.
+type Pattern struct {
+	Source string
+	elems  []elem
+	first  []text.Word // words that a match can begin with
+}
+
+type elemKind uint8
+
+const (
+	phrases elemKind = iota
+	gap
+	anyWord
+	number
+	markStart
+	markEnd
+)
+
+type elem struct {
+	kind     elemKind
+	optional bool
+	trie     *trie
+	max      int  // words of a gap
+	cross    bool // a gap that may cross a comma
+	verb     bool // the first word must be a verb
+	noun     bool // the first word must be a noun
+}
+
+// trie holds a set of word sequences.
+type trie struct {
+	next map[text.Word]*trie
+	end  bool
+}
+
+func (t *trie) add(words []text.Word) {
+	for _, w := range words {
+		if t.next == nil {
+			t.next = map[text.Word]*trie{}
+		}
+		if t.next[w] == nil {
+			t.next[w] = &trie{}
+		}
+		t = t.next[w]
+	}
+	t.end = true
+}
+
+// maxPhrases bounds what one term or group may stand for, so that a slip in a
+// rule file cannot eat the memory.
+const maxPhrases = 4000
+
+// FirstWords lists the words that a match can begin with.
+func (p *Pattern) FirstWords() []text.Word { return p.first }
+
+// Match is where a pattern was found.
+type Match struct {
+	First, Last int // tokens First..Last-1
+	Shown       corpus.Span
+	loose       uint64 // bit i: token First+i was passed over by a gap
+}
+
+// Within tells whether the tokens first..last-1 all stand in gaps of the
+// match: the pattern asked nothing of them.
+func (m Match) Within(first, last int) bool {
+	if first < m.First || last > m.Last || last-m.First > 64 {
+		return false
+	}
+	for i := first; i < last; i++ {
+		if m.loose&(1<<(i-m.First)) == 0 {
+			return false
+		}
+	}
+	return true
+}
+
+// MatchAt tells whether the pattern matches at token i of a sentence that
+// ends before token last. Gaps are kept as short as possible.
+func (p *Pattern) MatchAt(d *text.Doc, i, last int) (Match, bool) {
+	m := matcher{d: d, last: last, start: -1, end: -1}
+	end, ok := m.run(p.elems, i, i)
+	if !ok || end == i {
+		return Match{}, false
+	}
+	from, to := i, end
+	if m.start >= 0 {
+		from = m.start
+	}
+	if m.end >= 0 {
+		to = m.end
+	}
+	if to <= from {
+		from, to = i, end
+	}
+	return Match{i, end, corpus.Span{Start: d.Tokens[from].Start, End: d.Tokens[to-1].End}, m.loose}, true
+}
+
+type matcher struct {
+	d          *text.Doc
+	last       int
+	start, end int // tokens of the marks, -1 where there are none
+	loose      uint64
+}
+
+// run matches the elements from token i on; it returns the token after the
+// match. begin is where the whole match began.
+func (m *matcher) run(elems []elem, i, begin int) (int, bool) {
+	if len(elems) == 0 {
+		return i, true
+	}
+	e, rest := &elems[0], elems[1:]
+	switch e.kind {
+	case markStart, markEnd:
+		save := *m
+		if e.kind == markStart {
+			m.start = i
+		} else {
+			m.end = i
+		}
+		end, ok := m.run(rest, i, begin)
+		if !ok {
+			*m = save
+		}
+		return end, ok
+	case gap:
+		for n := 0; n <= e.max && i+n <= m.last; n++ {
+			if n > 0 && !e.cross && m.d.Tokens[i+n-1].Break != text.NoBreak && i+n-1 > begin {
+				return 0, false
+			}
+			save := m.loose
+			for k := i; k < i+n && k-begin < 64; k++ {
+				m.loose |= 1 << (k - begin)
+			}
+			if end, ok := m.run(rest, i+n, begin); ok {
+				return end, true
+			}
+			m.loose = save
+		}
+		return 0, false
+	case phrases:
+		if i < m.last && e.fits(m.d, i) {
+			if end, ok := m.walk(e.trie, rest, i, i, begin); ok {
+				return end, true
+			}
+		}
+	case anyWord, number:
+		if i < m.last && (e.kind == anyWord || m.d.Tokens[i].Number) {
+			if end, ok := m.run(rest, i+1, begin); ok {
+				return end, true
+			}
+		}
+	}
+	if e.optional {
+		return m.run(rest, i, begin)
+	}
+	return 0, false
+}
+
+// walk tries the phrases of a trie, the longest first. A phrase does not
+// cross a comma.
+func (m *matcher) walk(t *trie, rest []elem, from, i, begin int) (int, bool) {
+	if i < m.last && (i == from || m.d.Tokens[i].Break == text.NoBreak) {
+		if w := m.d.Tokens[i].Word; w != 0 {
+			if next := t.next[w]; next != nil {
+				if end, ok := m.walk(next, rest, from, i+1, begin); ok {
+					return end, true
+				}
+			}
+		}
+	}
+	if t.end {
+		return m.run(rest, i, begin)
+	}
+	return 0, false
+}
+
+// fits checks the part of speech, where one is asked for.
+func (e *elem) fits(d *text.Doc, i int) bool {
+	if !e.verb && !e.noun {
+		return true
+	}
+	if e.trie.next[d.Tokens[i].Word] == nil {
+		return false // spare the tagger
+	}
+	tag := d.Tag(i)
+	return e.verb && tag.Verb() || e.noun && tag.Noun()
+}
+
+// compiler turns pattern texts into patterns against one lexicon and the
+// terms of one book.
+type compiler struct {
+	lexicon *text.Lexicon
+	terms   map[string]*term
+	used    map[string]bool // terms used by the pattern at hand, and below them
+}
+
+func (c *compiler) pattern(source string) (*Pattern, error) {
+	p := &Pattern{Source: source}
+	items, err := pieces(source)
+	if err != nil {
+		return nil, err
+	}
+	for _, item := range items {
+		e, err := c.elem(item)
+		if err != nil {
+			return nil, err
+		}
+		p.elems = append(p.elems, e)
+	}
+	seen := map[text.Word]bool{}
+	open := true
+	for _, e := range p.elems {
+		if !open {
+			break
+		}
+		switch e.kind {
+		case markStart, markEnd:
+			continue
+		case gap, anyWord, number:
+			return nil, fmt.Errorf("pattern %q: begin with a word that must stand there, not with a gap", source)
+		}
+		for w := range e.trie.next {
+			if !seen[w] {
+				seen[w] = true
+				p.first = append(p.first, w)
+			}
+		}
+		open = e.optional
+	}
+	if open {
+		return nil, fmt.Errorf("pattern %q: nothing in it must stand there", source)
+	}
+	return p, nil
+}
+
+func (c *compiler) elem(item string) (elem, error) {
+	e := elem{}
+	switch {
+	case item == "[":
+		return elem{kind: markStart}, nil
+	case item == "]":
+		return elem{kind: markEnd}, nil
+	case item == "*":
+		return elem{kind: anyWord}, nil
+	case item == "#":
+		return elem{kind: number}, nil
+	case strings.HasPrefix(item, ".."):
+		dots := len(item) - len(strings.TrimLeft(item, "."))
+		e = elem{kind: gap, max: 3 * (dots - 1), cross: dots == 3}
+		if n := item[dots:]; n != "" {
+			max, err := strconv.Atoi(n)
+			if err != nil || max < 1 || max > 40 {
+				return e, fmt.Errorf("gap %q: want .. or ... and a number of words from 1 to 40", item)
+			}
+			e.max = max
+		}
+		if dots > 3 {
+			return e, fmt.Errorf("gap %q: want two dots or three", item)
+		}
+		return e, nil
+	}
+	if rest, ok := strings.CutSuffix(item, "?"); ok {
+		item, e.optional = rest, true
+	}
+	if rest, ok := strings.CutSuffix(item, ":verb"); ok {
+		item, e.verb = rest, true
+	} else if rest, ok := strings.CutSuffix(item, ":noun"); ok {
+		item, e.noun = rest, true
+	}
+	seqs, err := c.phrases(item)
+	if err != nil {
+		return e, err
+	}
+	if len(seqs) == 0 {
+		return e, fmt.Errorf("%q holds no word", item)
+	}
+	e.trie = &trie{}
+	for _, s := range seqs {
+		e.trie.add(s)
+	}
+	return e, nil
+}
+
+// phrases expands a word, term or group to word sequences.
+func (c *compiler) phrases(item string) ([][]text.Word, error) {
+	switch {
+	case strings.HasPrefix(item, "{"):
+		name := strings.Trim(item, "{}")
+		return c.term(name)
+	case strings.HasPrefix(item, "("):
+		var out [][]text.Word
+		for _, choice := range alternatives(item[1 : len(item)-1]) {
+			seqs, err := c.sequence(choice)
+			if err != nil {
+				return nil, err
+			}
+			out = append(out, seqs...)
+		}
+		return out, nil
+	case strings.HasSuffix(item, "~"):
+		var out [][]text.Word
+		for _, form := range Inflect(strings.TrimSuffix(item, "~")) {
+			out = append(out, c.lexicon.Words(form))
+		}
+		return out, nil
+	}
+	if words := c.lexicon.Words(item); len(words) > 0 {
+		return [][]text.Word{words}, nil
+	}
+	return nil, fmt.Errorf("%q holds no word", item)
+}
+
+// sequence expands a phrase (words, terms, groups, no gaps) to all the word
+// sequences that it stands for.
+func (c *compiler) sequence(phrase string) ([][]text.Word, error) {
+	items, err := pieces(phrase)
+	if err != nil {
+		return nil, err
+	}
+	out := [][]text.Word{nil}
+	for _, item := range items {
+		if strings.ContainsAny(item[:1], ".[]*#") || strings.Contains(item, ":") {
+			return nil, fmt.Errorf("%q cannot stand inside a term or a group", item)
+		}
+		item, optional := strings.CutSuffix(item, "?")
+		seqs, err := c.phrases(item)
+		if err != nil {
+			return nil, err
+		}
+		if optional {
+			seqs = append(seqs, nil)
+		}
+		if len(out)*len(seqs) > maxPhrases {
+			return nil, fmt.Errorf("%q stands for more than %d phrases", phrase, maxPhrases)
+		}
+		var longer [][]text.Word
+		for _, a := range out {
+			for _, b := range seqs {
+				longer = append(longer, append(append([]text.Word(nil), a...), b...))
+			}
+		}
+		out = longer
+	}
+	return out, nil
+}
+
+// term expands a named term, once.
+func (c *compiler) term(name string) ([][]text.Word, error) {
+	t := c.terms[name]
+	if t == nil {
+		return nil, fmt.Errorf("no term is called %q%s", name, c.nearest(name))
+	}
+	c.used[name] = true
+	switch t.state {
+	case expanding:
+		return nil, fmt.Errorf("term %q is explained by itself", name)
+	case expanded:
+		for u := range t.uses {
+			c.used[u] = true
+		}
+		return t.phrases, nil
+	}
+	t.state = expanding
+	outer := c.used
+	c.used = map[string]bool{}
+	for _, phrase := range t.source {
+		seqs, err := c.sequence(phrase.text)
+		if err != nil {
+			return nil, &Fault{t.file, phrase.line, fmt.Sprintf("term %q: %v", name, err)}
+		}
+		t.phrases = append(t.phrases, seqs...)
+	}
+	t.state, t.uses = expanded, c.used
+	c.used = outer
+	for u := range t.uses {
+		c.used[u] = true
+	}
+	return t.phrases, nil
+}
+
+// nearest suggests a term whose name begins alike.
+func (c *compiler) nearest(name string) string {
+	best, most := "", 2
+	for t := range c.terms {
+		n := 0
+		for n < len(t) && n < len(name) && t[n] == name[n] {
+			n++
+		}
+		if n > most || n == most && best != "" && t < best {
+			best, most = t, n
+		}
+	}
+	if best == "" {
+		return ""
+	}
+	return fmt.Sprintf("; did you mean %q?", best)
+}
+
+// pieces cuts a pattern at spaces that stand outside brackets; [ and ] are
+// pieces of their own. Neighbouring plain words stay apart here.
+func pieces(source string) ([]string, error) {
+	var out []string
+	depth, start := 0, -1
+	flush := func(i int) {
+		if start >= 0 {
+			out = append(out, source[start:i])
+			start = -1
+		}
+	}
+	for i := 0; i < len(source); i++ {
+		switch ch := source[i]; {
+		case ch == '(' || ch == '{':
+			if start < 0 {
+				start = i
+			}
+			depth++
+		case ch == ')' || ch == '}':
+			if depth--; depth < 0 {
+				return nil, fmt.Errorf("pattern %q: %q closes nothing", source, string(ch))
+			}
+		case depth > 0:
+		case ch == ' ' || ch == '\t':
+			flush(i)
+		case ch == '[' || ch == ']':
+			flush(i)
+			out = append(out, string(ch))
+		case start < 0:
+			start = i
+		}
+	}
+	if depth != 0 {
+		return nil, fmt.Errorf("pattern %q: a bracket is not closed", source)
+	}
+	flush(len(source))
+	if len(out) == 0 {
+		return nil, fmt.Errorf("an empty pattern")
+	}
+	return join(out), nil
+}
+
+// join brings neighbouring words together that the spelling table may write
+// as one: the lexicon decides, so plain neighbours are simply one piece.
+func join(items []string) []string {
+	plain := func(s string) bool { return !strings.ContainsAny(s, "{}()~?:.[]*#") }
+	var out []string
+	for i, s := range items {
+		if i > 0 && plain(s) && plain(items[i-1]) {
+			out[len(out)-1] += " " + s
+			continue
+		}
+		out = append(out, s)
+	}
+	return out
+}
+
+// alternatives cuts the inside of a group at the bars of its own level.
+func alternatives(s string) []string {
+	var out []string
+	depth, start := 0, 0
+	for i := 0; i < len(s); i++ {
+		switch s[i] {
+		case '(', '{':
+			depth++
+		case ')', '}':
+			depth--
+		case '|':
+			if depth == 0 {
+				out = append(out, s[start:i])
+				start = i + 1
+			}
+		}
+	}
+	return append(out, s[start:])
+}
