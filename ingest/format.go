@@ -1,0 +1,111 @@
+package ingest
+
+import (
+	"bytes"
+	"fmt"
+)
+
+// format is one kind of file that can be read.
+type format struct {
+	name string // begins the name of sources that do not name themselves
+	// looks tells whether a file that begins with these bytes, white space
+	// and byte-order mark cut off, is of the format.
+	looks func(head []byte) bool
+	open  func(w *window, lim limits) (rowReader, error)
+}
+
+// formats are tried in this order; any text at all may be a table.
+var formats = []format{
+	{"json", looksJSON, newJSONReader},
+	{"csv", func([]byte) bool { return true }, newDelimitedReader},
+}
+
+// formatOf picks the format of a file that begins with head.
+func formatOf(head []byte) format {
+	for _, f := range formats {
+		if f.looks(head) {
+			return f
+		}
+	}
+	panic("unreachable: the last format takes any text")
+}
+
+// byteOrderMark begins UTF-8 text as some programs write it.
+var byteOrderMark = []byte("\xEF\xBB\xBF")
+
+// asTable is what to try with a file that some program can open.
+const asTable = "save it as CSV or JSON"
+
+// signatures are first bytes that tell a file which holds no text to read
+// (the formats' own specifications), the more telling before the less.
+var signatures = []struct {
+	at    int
+	bytes string
+	what  string
+	try   string
+}{
+	{0, "%PDF-", "a PDF document", "export the reports as CSV or JSON from where they were published"},
+	{0, "{\\rtf", "an RTF document", asTable},
+	{0, "PK\x03\x04", "a ZIP archive", "unpack it and load what is inside"},
+	{0, "PK\x05\x06", "an empty ZIP archive", "check that it was downloaded whole"},
+	{0, "\xD0\xCF\x11\xE0\xA1\xB1\x1A\xE1", "an old Office document", asTable},
+	{0, "\x89PNG", "a PNG picture", "load the reports themselves"},
+	{0, "\xFF\xD8\xFF", "a JPEG picture", "load the reports themselves"},
+	{0, "GIF8", "a GIF picture", "load the reports themselves"},
+	{0, "\x7FELF", "a program", "load the reports themselves"},
+	{0, "SQLite format 3\x00", "an SQLite database", "export its table as CSV or JSON"},
+	{0, "\x00\x01\x00\x00Standard ", "an Access database", "export its table as CSV"},
+	{0, "PAR1", "a Parquet file", asTable},
+	{0, "\x1F\x8B", "gzip inside gzip", "unpack it once"},
+	{0, "BZh", "a bzip2 archive", "unpack it first; gzip is read as it is"},
+	{0, "\xFD7zXZ\x00", "an xz archive", "unpack it first; gzip is read as it is"},
+	{0, "\x28\xB5\x2F\xFD", "a zstd archive", "unpack it first; gzip is read as it is"},
+	{0, "7z\xBC\xAF\x27\x1C", "a 7z archive", "unpack it and load what is inside"},
+	{0, "Rar!", "a RAR archive", "unpack it and load what is inside"},
+	{257, "ustar", "a tar archive", "unpack it and load what is inside"},
+	{0, "\xFF\xFE", "UTF-16 text", "save it as UTF-8"},
+	{0, "\xFE\xFF", "UTF-16 text", "save it as UTF-8"},
+	{0, "<!DOCTYPE html", "a web page", "download the table itself"},
+	{0, "<!doctype html", "a web page", "download the table itself"},
+	{0, "<html", "a web page", "download the table itself"},
+	{0, "<", "XML or a web page", asTable},
+}
+
+// refuse returns an error that says what a file is that cannot hold a table
+// of reports, judged by its first bytes.
+func refuse(head []byte) error {
+	text := bytes.TrimLeft(head, jsonSpace)
+	for _, s := range signatures {
+		if len(head) < s.at {
+			continue
+		}
+		if !bytes.HasPrefix(head[s.at:], []byte(s.bytes)) && (s.at > 0 || !bytes.HasPrefix(text, []byte(s.bytes))) {
+			continue
+		}
+		what, try := s.what, s.try
+		if s.bytes == "PK\x03\x04" && (bytes.Contains(head, []byte("xl/")) || bytes.Contains(head, []byte("[Content_Types].xml"))) {
+			what, try = "a spreadsheet or another Office document", asTable
+		}
+		return fmt.Errorf("%s, not a table of reports: %s", what, try)
+	}
+	return refuseBinary(head)
+}
+
+// refuseBinary refuses bytes that no text holds: a NUL, or more than one
+// control character in a hundred (a stray one is a slip; a binary file has
+// about ten).
+func refuseBinary(head []byte) error {
+	controls := 0
+	for _, c := range head {
+		switch {
+		case c == 0:
+			return fmt.Errorf("binary data (a NUL byte at byte %d), not a table of reports: %s in UTF-8", bytes.IndexByte(head, 0)+1, asTable)
+		case c < ' ' && c != '\t' && c != '\n' && c != '\r' && c != '\f' || c == 0x7F:
+			controls++
+		}
+	}
+	if controls*100 > len(head) {
+		return fmt.Errorf("binary data (%d control characters in %d bytes), not a table of reports: %s", controls, len(head), asTable)
+	}
+	return nil
+}

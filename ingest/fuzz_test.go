@@ -1,0 +1,267 @@
+package ingest
+
+import (
+	"bytes"
+	"context"
+	"encoding/csv"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"reflect"
+	"slices"
+	"strings"
+	"testing"
+	"unicode/utf8"
+)
+
+// checkItems holds what is true of every file: each row became exactly one
+// thing, rows and lines go up, texts are UTF-8, and the raw rows, in order and
+// without overlap, stand in the file, with only what is passed over between.
+func checkItems(t *testing.T, text string, items []Item, passedOver string) {
+	t.Helper()
+	at, line := 0, 0
+	for i, it := range items {
+		if (it.Occurrence == nil) == (it.SetAside == nil) {
+			t.Fatalf("row %d is %v and %v", i+1, it.Occurrence, it.SetAside)
+		}
+		if it.Source.Row != i+1 || it.Source.Line < line {
+			t.Fatalf("row %d stands at %+v behind line %d", i+1, it.Source, line)
+		}
+		line = it.Source.Line
+		raw := it.Raw
+		if s := it.SetAside; s != nil {
+			if s.Reason == "" {
+				t.Fatalf("row %d is set aside without a reason", i+1)
+			}
+			if s.Spool != "" {
+				spooled, err := os.ReadFile(s.Spool)
+				if err != nil || len(raw) > 0 {
+					t.Fatalf("row %d: spool %v, %d raw bytes", i+1, err, len(raw))
+				}
+				raw = spooled
+			}
+		}
+		n := strings.Index(text[at:], string(raw))
+		if n < 0 || strings.Trim(text[at:at+n], passedOver) != "" {
+			t.Fatalf("row %d: raw %q does not follow %q", i+1, raw, text[at:])
+		}
+		if begins := 1 + strings.Count(text[:at+n], "\n"); begins != it.Source.Line {
+			t.Fatalf("row %d: line %d, begins on %d", i+1, it.Source.Line, begins)
+		}
+		at += n + len(raw)
+		if it.Occurrence != nil {
+			checkText(t, it)
+		}
+	}
+	if strings.Trim(text[at:], passedOver) != "" {
+		t.Fatalf("%q is in no row", text[at:])
+	}
+}
+
+// checkText holds that everything of an occurrence is UTF-8 and written again.
+func checkText(t *testing.T, it Item) {
+	t.Helper()
+	line, err := AppendRecord(nil, it.Occurrence)
+	if err != nil || !json.Valid(line) {
+		t.Fatalf("written as %q, %v", line, err)
+	}
+	if !utf8.Valid(line) || bytes.Contains(line, []byte(`\ufffd`)) && !bytes.Contains(it.Raw, []byte("\uFFFD")) &&
+		!bytes.ContainsAny(it.Raw, `&\`) {
+		t.Fatalf("not UTF-8: %q", line)
+	}
+	if it.Occurrence.ID == "" || it.Occurrence.Source == "" {
+		t.Fatalf("no identity: %s", line)
+	}
+}
+
+func FuzzDelimited(f *testing.F) {
+	for _, seed := range []string{
+		"id,date,narrative\nA,2019-01-02,\"one\r\ntwo \"\"x\"\"\"\nB,,\"open\nC,\"x\",y\n",
+		"id;narrative\r\n1;a \"b\" c\r\n\r\n;\r\n\"x\"y;z\r\n",
+		"id\tengines\n1\t2, 2\n\x00\t\xff\n",
+		"sep=|\nid|event\n1|ACC\n", "id,date\n1,31/02/2019\n2,\"1/13/2019\"", "narrative\n&amp;&#0;\n\"\n\"\"\n", "id,id,\n1,2,\"3\"\r",
+		"id,a\n1,\"" + strings.Repeat("long ", 60) + "\n2,b\n",
+	} {
+		f.Add(seed, 100)
+	}
+	f.Fuzz(func(t *testing.T, text string, maxRow int) {
+		maxRow = 16 + (maxRow%5000+5000)%5000
+		file, err := Open(context.Background(), "-", strings.NewReader(text), Options{MaxRow: maxRow, SpoolDir: t.TempDir()})
+		if err != nil {
+			return
+		}
+		defer file.Close()
+		if file.Header() == nil {
+			t.Skip("JSON")
+		}
+		items, err := drain(file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		body := text[strings.Index(text, string(file.Header()))+len(file.Header()):]
+		for i := range items { // lines are counted from the top of the file
+			items[i].Source.Line -= strings.Count(text[:len(text)-len(body)], "\n")
+		}
+		checkItems(t, body, items, " \t\r\n\v\f\u0085\u00a0\u1680\u2000\u2001\u2002\u2003\u2004\u2005\u2006\u2007\u2008\u2009\u200a\u2028\u2029\u202f\u205f\u3000")
+		compareWithCSV(t, file, items)
+	})
+}
+
+// compareWithCSV holds that a record has the cells that encoding/csv finds,
+// which drops the carriage return of a line break inside quotes.
+func compareWithCSV(t *testing.T, file *File, items []Item) {
+	delimiter := file.reader.(*delimitedReader).split.delimiter
+	for _, it := range items {
+		s := splitter{delimiter: delimiter}
+		if it.SetAside != nil && (it.SetAside.Spool != "" || strings.HasPrefix(it.SetAside.Reason, "quote opened")) {
+			continue
+		}
+		found := s.scan(it.Raw, true)
+		if found.outcome != complete || found.end != len(it.Raw) {
+			t.Fatalf("%q: found %+v", it.Raw, found)
+		}
+		r := csv.NewReader(bytes.NewReader(it.Raw))
+		r.Comma, r.LazyQuotes = rune(delimiter), true
+		want, err := r.Read()
+		if errors.Is(err, io.EOF) {
+			continue
+		}
+		var got []string
+		for _, c := range s.cells(string(it.Raw)) {
+			got = append(got, strings.ReplaceAll(c, "\r\n", "\n"))
+		}
+		if err != nil || !slices.Equal(got, want) {
+			t.Fatalf("%q: cells %q, encoding/csv has %q, %v", it.Raw, got, want, err)
+		}
+	}
+}
+
+func FuzzJSON(f *testing.F) {
+	for _, seed := range []string{
+		`{"id":"A","date":"2019-01","narrative":"x \u00e9\ud83d\ude00\ud83d \n"}` + "\n{}\n{\"id\":1e5}\n",
+		`[{"id":"A","narratives":[{"kind":"cause","text":"t"},"x",1]}, {"id" 1}, 7, "s", null]`,
+		`[{"id":"A"}} , {"id":"B"`, "{\n\"id\": \"A\"\n}\n{ \"id\":\"B\", \"extra\":{\"a\":[1, 2]},\"extra\":1}",
+		`{"id":"A","codes":[{"scheme":"s"}],"aircraft":[{"engines":2.0}],"engines":"3","id":"B"}`, "[\n]x", `{"id":"A"},`, "[1,,2]",
+		`[{"id":"` + strings.Repeat("long ", 60) + `"},{"id":"B"}]`,
+	} {
+		f.Add(seed, 100)
+	}
+	f.Fuzz(func(t *testing.T, text string, maxRow int) {
+		maxRow = 16 + (maxRow%5000+5000)%5000
+		file, err := Open(context.Background(), "-", strings.NewReader(text), Options{MaxRow: maxRow, SpoolDir: t.TempDir()})
+		if err != nil {
+			return
+		}
+		defer file.Close()
+		j, ok := file.reader.(*jsonReader)
+		if !ok {
+			t.Skip("a table")
+		}
+		items, err := drain(file)
+		if err != nil && !strings.HasSuffix(err.Error(), "the file may be cut short") {
+			t.Fatal(err)
+		}
+		between := jsonSpace + "\uFEFF"
+		if j.shape != perLine {
+			between += ",[]"
+		}
+		checkItems(t, text, items, between)
+		for _, it := range items {
+			compareWithJSON(t, it)
+		}
+	})
+}
+
+// compareWithJSON holds that a row is taken if and only if encoding/json
+// takes it for an object, but for trailing commas, and that its plain values
+// are the same.
+func compareWithJSON(t *testing.T, it Item) {
+	if it.SetAside != nil {
+		if strings.HasPrefix(it.SetAside.Reason, "broken JSON at") && !strings.Contains(it.SetAside.Reason, "nested deeper") && json.Valid(it.Raw) {
+			t.Fatalf("%q: %s, yet valid", it.Raw, it.SetAside.Reason)
+		}
+		return
+	}
+	var want map[string]any
+	if err := json.Unmarshal(it.Raw, &want); err != nil {
+		if !trailingComma(it.Raw) {
+			t.Fatalf("%q: taken, yet %v", it.Raw, err)
+		}
+		return
+	}
+	var got map[string]any
+	p := jsonText{s: string(it.Raw)}
+	got = map[string]any{}
+	err := p.object(func(key string) error {
+		start := p.at
+		text, _, _, err := p.any()
+		var v any
+		if c := strings.TrimLeft(p.s[start:p.at], jsonSpace+":"); strings.HasPrefix(c, `"`) {
+			v = text
+		} else if err := json.Unmarshal([]byte(c), &v); err != nil {
+			return fmt.Errorf("%q: %w", c, err)
+		}
+		got[key] = v
+		return err
+	})
+	if err != nil || !reflect.DeepEqual(got, want) {
+		t.Fatalf("%q: got %v, %v, want %v", it.Raw, got, err, want)
+	}
+}
+
+// trailingComma tells whether a comma stands before a closing bracket or at
+// the end, outside texts.
+func trailingComma(raw []byte) bool {
+	inText, escaped, comma := false, false, false
+	for _, c := range raw {
+		switch {
+		case inText:
+			inText = escaped || c != '"'
+			escaped = !escaped && c == '\\'
+		case c == '"':
+			inText, comma = true, false
+		case c == ',':
+			comma = true
+		case strings.IndexByte(jsonSpace, c) >= 0:
+		default:
+			if comma && (c == ']' || c == '}') {
+				return true
+			}
+			comma = false
+		}
+	}
+	return comma
+}
+
+func FuzzDate(f *testing.F) {
+	for _, seed := range []string{"2014-12-31", "10-JAN-95", "Jan 10, 1995", "3/4/2021 10:11 PM", "201412", "2014-12-31T18:10:00Z", "0000-00-00", "1//2"} {
+		f.Add(seed, "dmy")
+	}
+	f.Fuzz(func(t *testing.T, text, order string) {
+		d, err := parseDate(text, order)
+		if err == nil && text != "" && (d.Year == 0 || d.Check() != nil) {
+			t.Fatalf("%q: date %+v", text, d)
+		}
+		if err != nil && d.Year != 0 {
+			t.Fatalf("%q: date %+v and error %v", text, d, err)
+		}
+		if err == nil {
+			if again, err := parseDate(d.String(), order); err != nil || again != d {
+				t.Fatalf("%q: %v read again as %v, %v", text, d, again, err)
+			}
+		}
+		if order == "" && err == nil { // a date that needs no order is the same under any that reads it
+			for _, o := range dateOrders {
+				if other, err := parseDate(text, o.name); err == nil && other != d {
+					t.Fatalf("%q: %v, but %v with %s", text, d, other, o.words)
+				}
+			}
+		}
+		var e dateEvidence
+		if e.add(text, 1) != nil {
+			t.Fatalf("%q alone contradicts itself", text)
+		}
+	})
+}

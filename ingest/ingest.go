@@ -1,0 +1,360 @@
+package ingest
+
+import (
+	"bufio"
+	"bytes"
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"strings"
+	"sync/atomic"
+
+	"github.com/klauspost/compress/gzip"
+
+	"catena/ingest/corpus"
+)
+
+// Options say how to read a file. The zero value reads any file.
+type Options struct {
+	Source   string // names the source of all occurrences, over what the rows say
+	Dates    string // order of dates of three numbers: dmy, mdy, ymd, or "" to see from the values
+	MaxRow   int    // bytes of one row held in memory; 0 for DefaultMaxRow
+	SpoolDir string // where larger rows go, as temporary files; "" for the system's folder
+}
+
+// DefaultMaxRow is the row limit: a long final report is a few hundred
+// kilobytes, so a row of more is an export gone wrong.
+const DefaultMaxRow = 4 << 20
+
+// The sample that Open looks at before the first row is returned.
+const (
+	sampleRows  = 2_000
+	sampleBytes = 4 << 20
+)
+
+// Item is what became of one row: an occurrence or a row set aside, never
+// both. All of it belongs to the caller, also a spooled row's file.
+type Item struct {
+	Source     corpus.Source
+	Occurrence *corpus.Occurrence
+	SetAside   *corpus.SetAside
+	Raw        []byte // the row exactly as read, without the line break that ends it; empty for a spooled row
+}
+
+// File is an open file of occurrences. It is for one goroutine, but BytesRead
+// may be called from any.
+type File struct {
+	ctx    context.Context // ends the reading, as it would a copy between streams
+	path   string
+	opts   Options
+	closer []io.Closer
+	disk   *countingReader
+	size   int64
+
+	window *window
+	reader rowReader
+	mapper *mapper
+	sample []row // rows read by Open and not yet returned
+	fault  error // what ended the reading
+	rows   int   // rows returned
+}
+
+// Open opens a file, or, for the path "-", the stream in, and finds out its
+// format and map. It refuses a folder, an empty file, a file that is no table
+// of reports, and a table whose columns or dates cannot be made out; the
+// error says what to try.
+func Open(ctx context.Context, path string, in io.Reader, opts Options) (*File, error) {
+	if opts.MaxRow <= 0 {
+		opts.MaxRow = DefaultMaxRow
+	}
+	if opts.Dates != "" && orderWords(opts.Dates) == "" {
+		return nil, fmt.Errorf("order of dates %q: want dmy, mdy or ymd", opts.Dates)
+	}
+	f := &File{ctx: ctx, path: path, opts: opts}
+	err := f.open(in)
+	if err != nil {
+		f.Close()
+		return nil, fmt.Errorf("open %s: %w", f.name(), err)
+	}
+	return f, nil
+}
+
+// name is the path as errors show it.
+func (f *File) name() string {
+	if f.path == "-" {
+		return "standard input"
+	}
+	return fmt.Sprintf("%q", f.path)
+}
+
+// open reads as far as the end of the sample.
+func (f *File) open(in io.Reader) error {
+	in, err := f.input(in)
+	if err != nil {
+		return err
+	}
+	w := newWindow(in)
+	f.window = w
+	if err := begin(w); err != nil {
+		return err
+	}
+	if err := refuse(w.bytes()); err != nil {
+		return err
+	}
+	format := formatOf(w.bytes())
+	lim := limits{f.opts.MaxRow, f.opts.SpoolDir}
+	if f.reader, err = format.open(w, lim); err != nil {
+		var spooled errSpooled
+		if errors.As(err, &spooled) {
+			os.Remove(spooled.path)
+		}
+		return err
+	}
+	if err := f.readSample(); err != nil {
+		return err
+	}
+	return f.makeMap(format.name)
+}
+
+// input opens the path and undoes gzip, told by its first two bytes.
+func (f *File) input(in io.Reader) (io.Reader, error) {
+	if f.path != "-" {
+		file, err := os.Open(f.path)
+		if err != nil {
+			return nil, plain(err)
+		}
+		f.closer = append(f.closer, file)
+		info, err := file.Stat()
+		switch {
+		case err != nil:
+			return nil, plain(err)
+		case info.IsDir():
+			return nil, fmt.Errorf("a folder, not a file")
+		case info.Mode().IsRegular():
+			f.size = info.Size()
+		}
+		in = file
+	}
+	if in == nil {
+		return nil, fmt.Errorf("nothing to read from")
+	}
+	f.disk = &countingReader{in: in}
+	buffered := bufio.NewReaderSize(f.disk, windowSize)
+	if magic, _ := buffered.Peek(2); string(magic) != "\x1F\x8B" {
+		return buffered, nil
+	}
+	unpacked, err := gzip.NewReader(buffered)
+	if err != nil {
+		return nil, fmt.Errorf("unpack gzip: %w", err)
+	}
+	f.closer = append(f.closer, unpacked)
+	return unpacked, nil
+}
+
+// plain drops the operation and path from an error of the file system; the
+// caller's message names them.
+func plain(err error) error {
+	var path *os.PathError
+	if errors.As(err, &path) {
+		return path.Err
+	}
+	return err
+}
+
+// begin cuts the byte-order mark off and passes over white space until the
+// window holds text; an error means that there is none.
+func begin(w *window) error {
+	w.fill(windowSize)
+	if bytes.HasPrefix(w.bytes(), byteOrderMark) {
+		w.take(len(byteOrderMark))
+	}
+	for len(bytes.TrimSpace(w.bytes())) == 0 {
+		w.take(len(w.bytes()))
+		if w.fill(windowSize); len(w.bytes()) > 0 {
+			continue
+		}
+		if err := w.fault(); err != nil {
+			return err
+		}
+		if w.line == 1 {
+			return fmt.Errorf("an empty file: check that it was downloaded or exported whole")
+		}
+		return fmt.Errorf("a file of white space only: check that it was downloaded or exported whole")
+	}
+	return nil
+}
+
+// readSample reads the rows that the map is made from.
+func (f *File) readSample() error {
+	size := 0
+	for len(f.sample) < sampleRows && size < sampleBytes {
+		if err := f.ctx.Err(); err != nil {
+			return err
+		}
+		r, err := f.read()
+		if err != nil {
+			return nil // Next returns it behind the sample
+		}
+		f.sample = append(f.sample, r)
+		size += len(r.raw)
+	}
+	return nil
+}
+
+// makeMap maps the columns and decides the order of dates.
+func (f *File) makeMap(format string) error {
+	names := f.reader.columns().names
+	f.mapper = newMapper(format, names)
+	if !f.mapper.known() && (format != "json" || len(names) > 0) {
+		return fmt.Errorf("no column is known for an id, a date or a narrative among %s: name the columns as in an occurrence record (id, date, narrative)",
+			listNames(names))
+	}
+	return f.orderDates()
+}
+
+// listNames writes the first few of a list of names.
+func listNames(names []string) string {
+	const most = 12
+	var b strings.Builder
+	for i, name := range names[:min(len(names), most)] {
+		if i > 0 {
+			b.WriteString(", ")
+		}
+		fmt.Fprintf(&b, "%q", brief(name))
+	}
+	if len(names) > most {
+		fmt.Fprintf(&b, " and %d more", len(names)-most)
+	}
+	return b.String()
+}
+
+// orderDates decides whether day or month comes first in the date column.
+func (f *File) orderDates() error {
+	i := f.mapper.dateColumn()
+	if i < 0 {
+		return nil
+	}
+	column := &f.mapper.Columns[i]
+	if f.opts.Dates != "" {
+		f.mapper.DateOrder = f.opts.Dates
+		column.Note = orderWords(f.opts.Dates) + ", as told"
+		return nil
+	}
+	var seen dateEvidence
+	for _, r := range f.sample {
+		for _, c := range r.cells {
+			if c.column != i {
+				continue
+			}
+			if err := seen.add(strings.TrimSpace(c.text), r.line); err != nil {
+				return fmt.Errorf("column %q: %w", column.Column, err)
+			}
+		}
+	}
+	order, err := seen.order()
+	if err != nil {
+		return fmt.Errorf("column %q: %w", column.Column, err)
+	}
+	if f.mapper.DateOrder = order; order != "" {
+		column.Note = orderWords(order) + ", as the values show"
+	}
+	return nil
+}
+
+// Map is what the columns are taken for. It must not be changed.
+func (f *File) Map() *Map { return &f.mapper.Map }
+
+// Header is the header row as read, nil for formats that have none. Set above
+// a row that was set aside, it makes that row a file again.
+func (f *File) Header() []byte {
+	if d, ok := f.reader.(*delimitedReader); ok {
+		return d.header
+	}
+	return nil
+}
+
+// Next returns the next row, and io.EOF after the last. Any other error means
+// that nothing more can be read; it names the file and the line.
+func (f *File) Next() (Item, error) {
+	if err := f.ctx.Err(); err != nil {
+		return Item{}, fmt.Errorf("read %s: %w", f.name(), err)
+	}
+	r, err := f.row()
+	if err == io.EOF {
+		return Item{}, err
+	}
+	if err != nil {
+		return Item{}, fmt.Errorf("read %s: %w", f.name(), err)
+	}
+	f.rows++
+	item := Item{Source: corpus.Source{File: f.path, Row: f.rows, Line: r.line}, Raw: r.raw}
+	if r.reason == "" {
+		f.mapper.extend(f.reader.columns().names)
+		item.Occurrence, r.reason = f.mapper.occurrence(r.cells, f.opts.Source)
+	}
+	if r.reason != "" {
+		item.SetAside = &corpus.SetAside{Source: item.Source, Reason: r.reason, Raw: r.raw, Spool: r.spool}
+	}
+	return item, nil
+}
+
+// row returns the next row of the sample or behind it.
+func (f *File) row() (row, error) {
+	if len(f.sample) > 0 {
+		r := f.sample[0]
+		f.sample[0] = row{}
+		f.sample = f.sample[1:]
+		return r, nil
+	}
+	return f.read()
+}
+
+// read reads one row behind the sample and remembers what ended the reading.
+func (f *File) read() (row, error) {
+	if f.fault != nil {
+		return row{}, f.fault
+	}
+	r, err := f.reader.next()
+	if err != nil && err != io.EOF {
+		err = fmt.Errorf("line %d: %w", f.window.line, err)
+	}
+	f.fault = err
+	return r, err
+}
+
+// BytesRead is how far the file has been read, in bytes on disk; packed ones
+// for a packed file. Next runs a little behind it.
+func (f *File) BytesRead() int64 { return f.disk.n.Load() }
+
+// Size is the file's size on disk in bytes, 0 where there is none to know.
+func (f *File) Size() int64 { return f.size }
+
+// Close closes the file and removes spooled rows that Next did not return.
+func (f *File) Close() error {
+	for _, r := range f.sample {
+		if r.spool != "" {
+			os.Remove(r.spool)
+		}
+	}
+	f.sample = nil
+	var err error
+	for i := len(f.closer) - 1; i >= 0; i-- {
+		err = errors.Join(err, f.closer[i].Close())
+	}
+	f.closer = nil
+	return err
+}
+
+// countingReader counts the bytes that pass.
+type countingReader struct {
+	in io.Reader
+	n  atomic.Int64
+}
+
+func (c *countingReader) Read(p []byte) (int, error) {
+	n, err := c.in.Read(p)
+	c.n.Add(int64(n))
+	return n, err
+}
