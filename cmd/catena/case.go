@@ -1,0 +1,138 @@
+package main
+
+import (
+	"fmt"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"catena/classify/catalogue"
+	"catena/ingest/collection"
+	"catena/ingest/corpus"
+	"catena/ingest/store"
+	"catena/queries"
+)
+
+func newCaseCommand(g *globalOptions) *cobra.Command {
+	source := ""
+	cmd := &cobra.Command{
+		Use:   "case ID",
+		Short: "One occurrence as a chain, with the sentence and rule behind each link",
+		Long: `Prints one occurrence: its fields, its chain in the order of time, the words
+behind each link, what else its narratives say of factors (denied, possible,
+advised, elsewhere), and the row of the file that it was read from.`,
+		Example: `  catena case T21-014
+  catena case --source sellow S22-007`,
+		Args: args(cobra.ExactArgs(1)),
+		RunE: func(cmd *cobra.Command, ids []string) error { return runCase(cmd, g, source, ids[0]) },
+	}
+	g.addAt(cmd.Flags())
+	cmd.Flags().StringVar(&source, "source", "", "the source, where several use the same reference")
+	return cmd
+}
+
+func runCase(cmd *cobra.Command, g *globalOptions, source, id string) error {
+	c, err := g.open(cmd)
+	if err != nil {
+		return err
+	}
+	defer c.Close()
+	keys, err := c.Store.Keys(cmd.Context(), source, id)
+	if err != nil {
+		return err
+	}
+	if len(keys) == 0 {
+		return hint(fmt.Errorf("no occurrence has the reference %q", id), "catena find WORDS lists occurrences with their references")
+	}
+	for i, key := range keys {
+		r, err := c.Store.One(cmd.Context(), key)
+		if err != nil {
+			return err
+		}
+		if i > 0 {
+			fmt.Fprintln(cmd.OutOrStdout())
+		}
+		printCase(cmd, c, r)
+	}
+	return nil
+}
+
+func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
+	out := cmd.OutOrStdout()
+	sentences := map[int]func(corpus.Span) corpus.Span{}
+	sentence := func(t corpus.Tag) string {
+		if sentences[t.Narrative] == nil {
+			sentences[t.Narrative] = queries.SentenceFinder(c.Classifier.Book().Lexicon, r.Narratives[t.Narrative].Text)
+		}
+		text := r.Narratives[t.Narrative].Text
+		s := sentences[t.Narrative](t.Span)
+		return clean(strings.TrimSpace(text[s.Start:t.Start])) + " [" + clean(t.Quote) + "] " + clean(strings.TrimSpace(text[t.End:s.End]))
+	}
+	fmt.Fprintf(out, "%s\n", headline(r))
+	for _, f := range []struct{ name, value string }{
+		{"event", r.Event}, {"phase", r.Phase}, {"injury", r.Injury}, {"damage", r.Damage},
+	} {
+		if f.value != "" {
+			fmt.Fprintf(out, "  %s: %s\n", f.name, clean(f.value))
+		}
+	}
+	fmt.Fprintf(out, "  read from %s, row %d, line %d; rule book %s\n", clean(r.File), r.Row, r.Line, r.Rulebook)
+	fmt.Fprintf(out, "\nChain, in the order of time:\n")
+	if len(r.Chain.Links) == 0 {
+		fmt.Fprintln(out, "  no factor of the catalogue is affirmed")
+	}
+	for i, l := range r.Chain.Links {
+		t := r.Tags[l.Tag]
+		fmt.Fprintf(out, "  %d. %s%s\n     %s\n     (%s, rule %s, strength %.2f)\n", i+1, l.Factor, sideWords(t), strings.TrimSpace(sentence(t)), kindOf(l.Factor), t.Rule, t.Strength)
+	}
+	if r.Chain.BrokenBy != "" {
+		fmt.Fprintf(out, "  broken by: %s\n", r.Chain.BrokenBy)
+	}
+	others := 0
+	for _, t := range r.Tags {
+		if t.Assertion == corpus.Affirmed {
+			continue
+		}
+		if others++; others == 1 {
+			fmt.Fprintf(out, "\nAlso spoken of, and not counted:\n")
+		}
+		fmt.Fprintf(out, "  %s, %s\n     %s\n", t.Factor, t.Assertion, strings.TrimSpace(sentence(t)))
+	}
+	for n, t := range r.Narratives {
+		fmt.Fprintf(out, "\nNarrative %d (%s):\n%s\n", n+1, clean(t.Kind), wrap(clean(t.Text), width(out)))
+	}
+	fmt.Fprintf(out, "\nThis is what the report tells, not a finding of cause. The investigating authority,\nthe aircraft flight manual, local regulations and licensed instructors come first.\n")
+}
+
+func sideWords(t corpus.Tag) string {
+	if t.Side == "" {
+		return ""
+	}
+	return " (" + t.Side + ")"
+}
+
+func kindOf(factor string) catalogue.Kind {
+	f, _ := catalogue.Builtin().Factor(factor)
+	return f.Kind
+}
+
+// wrap breaks a text at spaces.
+func wrap(s string, width int) string {
+	var b strings.Builder
+	col := 0
+	for _, w := range strings.Fields(s) {
+		n := len([]rune(w))
+		switch {
+		case col == 0:
+		case col+1+n > width:
+			b.WriteByte('\n')
+			col = 0
+		default:
+			b.WriteByte(' ')
+			col++
+		}
+		b.WriteString(w)
+		col += n
+	}
+	return b.String()
+}
