@@ -55,6 +55,17 @@ func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed 
 	if len(affirmed) > 1 {
 		c.book.FindTurns(d, d.Sentences[hits[0].sentence], func(m rulebook.Match) { turns = append(turns, m) })
 	}
+	// the same words may show a condition and the outcome that it is: the
+	// condition comes first
+	for k := 1; k < len(affirmed); k++ {
+		for j := k; j > 0; j-- {
+			a, b := &hits[affirmed[j-1]], &hits[affirmed[j]]
+			if !a.Overlaps(b.Span) || c.rank(a.Factor) <= c.rank(b.Factor) {
+				break
+			}
+			affirmed[j-1], affirmed[j] = affirmed[j], affirmed[j-1]
+		}
+	}
 	// the turning words cut the sentence into parts, told latest first
 	part := 0
 	var parts [][]placed
@@ -143,4 +154,10 @@ func (c *Classifier) ending(chain *corpus.Chain) {
 	if len(chain.Links) < 2 { // nothing was broken
 		chain.BrokenBy = ""
 	}
+}
+
+// rank orders the kinds of factor as they usually follow each other.
+func (c *Classifier) rank(factor string) int {
+	f, _ := c.book.Tree.Factor(factor)
+	return slices.Index([]catalogue.Kind{catalogue.Trigger, catalogue.Response, catalogue.Condition, catalogue.Outcome, catalogue.Recovery}, f.Kind)
 }

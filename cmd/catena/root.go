@@ -26,7 +26,8 @@ import (
 )
 
 func newRootCommand() *cobra.Command {
-	g := &globalOptions{}
+	// each command has flags of its own, whose defaults may differ
+	g := func() *globalOptions { return &globalOptions{} }
 	root := &cobra.Command{
 		Use:   "catena",
 		Short: "Accident and incident patterns, from reports to tables",
@@ -61,8 +62,8 @@ Exit status: 0 done, 1 failed, 2 wrong usage, 3 done but some input was set asid
 	root.SuggestionsMinimumDistance = 2
 	root.CompletionOptions.HiddenDefaultCmd = false
 	root.AddCommand(
-		newDemoCommand(g), newLoadCommand(g), newExposureCommand(g), newTagCommand(g), newFindCommand(g), newTrendCommand(g),
-		newChainsCommand(g), newCaseCommand(g), newExportCommand(g), newRulesCommand(g), newManCommand(),
+		newDemoCommand(g()), newLoadCommand(g()), newExposureCommand(g()), newTagCommand(g()), newFindCommand(g()), newTrendCommand(g()),
+		newChainsCommand(g()), newCaseCommand(g()), newExportCommand(g()), newRulesCommand(g()), newManCommand(),
 	)
 	return root
 }

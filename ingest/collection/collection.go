@@ -48,14 +48,14 @@ const (
 // Open opens the collection in dir. Without Write a missing one is
 // store.ErrMissing; with Write and another writer at work the error is
 // ErrHeld once the patience is over.
-func Open(ctx context.Context, dir string, opts Options) (c *Collection, err error) {
+func Open(ctx context.Context, dir string, opts Options) (_ *Collection, err error) {
 	if opts.Now == nil {
 		opts.Now = time.Now
 	}
 	if opts.Note == nil {
 		opts.Note = func(string) {}
 	}
-	c = &Collection{Dir: dir, opts: opts, unlock: func() {}}
+	c := &Collection{Dir: dir, opts: opts, unlock: func() {}}
 	defer func() {
 		if err != nil {
 			c.Close()
