@@ -16,7 +16,14 @@ import (
 	"github.com/rogpeppe/go-internal/testscript"
 )
 
+// asProgram makes the test binary run as the program itself.
+const asProgram = "CATENA_RUN_AS_PROGRAM"
+
 func TestMain(m *testing.M) {
+	if os.Getenv(asProgram) != "" {
+		main()
+		return
+	}
 	testscript.Main(m, map[string]func(){"catena": main})
 }
 
