@@ -22,10 +22,32 @@ func side(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, s text.Sentence, m r
 	for to < s.Last && to-m.Last < around && d.Tokens[to].Break == text.NoBreak {
 		to++
 	}
+	if joined(lex, d, max(s.First, m.First-2*around), m.Last) {
+		return ""
+	}
 	if found := sideWithin(lex, r, d, m.First, m.Last); found != "" {
 		return found
 	}
 	return sideWithin(lex, r, d, from, to)
+}
+
+// joined tells whether "and" or "or" stands between two sides, as in "the
+// left and right engines".
+func joined(lex *text.Lexicon, d *text.Doc, from, to int) bool {
+	side := false
+	link := false
+	for i := from; i < to; i++ {
+		switch lex.Name(d.Tokens[i].Word) {
+		case "left", "right":
+			if side && link {
+				return true
+			}
+			side, link = true, false
+		case "and", "or":
+			link = true
+		}
+	}
+	return false
 }
 
 func sideWithin(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, from, to int) string {

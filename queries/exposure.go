@@ -102,6 +102,9 @@ func (t *trend) denominators(exposure []corpus.Exposure) *denominators {
 			}
 		}
 	}
+	if len(d.amount) > 0 && len(t.voluntary) > 0 {
+		d.notes = append(d.notes, "these are voluntary reports: a rate that rises can mean better reporting")
+	}
 	if len(d.amount) > 0 {
 		d.notes = append(d.notes, fmt.Sprintf("rates are per %s %s", thousands(t.Scale), t.Per))
 	}
@@ -124,10 +127,9 @@ func (t *trend) covering(exposure []corpus.Exposure) (rows []corpus.Exposure, re
 			return nil, fmt.Sprintf("the exposure covers %s, and the count holds %q too; narrow it with --only 'source = ...'", quoted(covered), s)
 		}
 		if t.voluntary[s] && t.By != "source" {
-			if !names(conjuncts, s) {
-				return nil, fmt.Sprintf("%q holds voluntary reports, which grow with the will to report; name it with --only to see a rate all the same", s)
+			if len(t.sources) > 1 || !names(conjuncts, s) {
+				return nil, fmt.Sprintf("%q holds voluntary reports, which grow with the will to report; ask for it alone, --only 'source = %s', to see a rate all the same", s, s)
 			}
-			reason = "" // asked for by name: given, with a note of its own
 		}
 	}
 	strata := map[string]bool{}
@@ -178,6 +180,9 @@ func names(conjuncts []filter.Node, source string) bool {
 // whole.
 func (t *trend) amount(rows []corpus.Exposure, key string) (float64, bool) {
 	sum, days := 0.0, map[string]bool{}
+	if t.By == "source" && t.voluntary[key] {
+		return 0, false
+	}
 	var period corpus.Period
 	if t.grain() != "" {
 		var err error
