@@ -66,9 +66,11 @@ func Open(ctx context.Context, dir string, opts Options) (_ *Collection, err err
 		if err := os.MkdirAll(filepath.Join(dir, spoolName), 0o755); err != nil {
 			return nil, err
 		}
-		if c.unlock, err = lock(ctx, dir, opts.Command, opts.Patience, opts.Now, opts.Note); err != nil {
+		unlock, err := lock(ctx, dir, opts.Command, opts.Patience, opts.Now, opts.Note)
+		if err != nil {
 			return nil, err
 		}
+		c.unlock = unlock
 	}
 	if c.Store, err = store.Open(ctx, filepath.Join(dir, databaseName), !opts.Write); err != nil {
 		return nil, err
@@ -123,7 +125,7 @@ func LoadBook(folder string) (*rulebook.Book, error) {
 	return book, nil
 }
 
-// Close gives everything back.
+// Close gives everything back. Closing twice does no harm.
 func (c *Collection) Close() error {
 	var errs []error
 	if c.index != nil {
@@ -133,6 +135,7 @@ func (c *Collection) Close() error {
 		errs = append(errs, c.Store.Close())
 	}
 	c.unlock()
+	c.index, c.Store, c.unlock = nil, nil, func() {}
 	return errors.Join(errs...)
 }
 

@@ -23,11 +23,17 @@ const (
 // foreign one is built anew, one that is behind is brought up to date. While
 // another process writes, the index may lag behind and a note says so.
 func (c *Collection) Index(ctx context.Context) (*index.Index, error) {
+	if c.index != nil && c.opts.Write {
+		// a load that was broken off leaves the index behind; another must
+		// not go on from there, or the changes between would stay unknown
+		return c.index, c.catchUp(ctx)
+	}
 	if c.index != nil {
 		return c.index, nil
 	}
 	if c.opts.Write {
-		return c.index, c.heal(ctx)
+		err := c.heal(ctx)
+		return c.index, err
 	}
 	want, err := c.Store.Change(ctx)
 	if err != nil {
@@ -61,6 +67,15 @@ func (c *Collection) Index(ctx context.Context) (*index.Index, error) {
 	return c.index, err
 }
 
+// catchUp feeds the open index with what the database has beyond it.
+func (c *Collection) catchUp(ctx context.Context) error {
+	want, err := c.Store.Change(ctx)
+	if err != nil || c.index.Change() == want {
+		return err
+	}
+	return c.replay(ctx, c.index, want)
+}
+
 // mendable tells whether building the index anew can help.
 func mendable(err error) bool {
 	return errors.Is(err, index.ErrMissing) || errors.Is(err, index.ErrDamaged) || errors.Is(err, index.ErrFormat)
@@ -79,14 +94,8 @@ func (c *Collection) heal(ctx context.Context) error {
 		err = index.ErrDamaged
 		x.Close()
 	case err == nil:
-		if x.Change() < want {
-			if err := c.replay(ctx, x, want); err != nil {
-				x.Close()
-				return err
-			}
-		}
 		c.index = x
-		return nil
+		return c.catchUp(ctx)
 	}
 	if !mendable(err) {
 		return err
