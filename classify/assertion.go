@@ -46,11 +46,11 @@ func (c *Classifier) cues(d *text.Doc, s text.Sentence) []cue {
 // Where several cues reach, another flight outweighs advice, advice outweighs
 // a denial, and a denial outweighs a possibility. In a cause statement what
 // is offered as possible is the stated cause, and counts as affirmed.
-func assertion(cues []cue, m rulebook.Match, kind string) corpus.Assertion {
+func assertion(d *text.Doc, cues []cue, m rulebook.Match, kind string) corpus.Assertion {
 	found := corpus.Affirmed
 	for _, q := range cues {
 		a := corpus.Assertion(q.Sense)
-		if q.Sense != rulebook.End && weight[a] > weight[found] && reaches(cues, q, m) {
+		if q.Sense != rulebook.End && weight[a] > weight[found] && reaches(d, cues, q, m) {
 			found = a
 		}
 	}
@@ -64,7 +64,7 @@ var weight = map[corpus.Assertion]int{
 	corpus.Affirmed: 0, corpus.Possible: 1, corpus.Denied: 2, corpus.Advised: 3, corpus.Elsewhere: 4,
 }
 
-func reaches(cues []cue, q cue, m rulebook.Match) bool {
+func reaches(d *text.Doc, cues []cue, q cue, m rulebook.Match) bool {
 	if q.first >= m.First && q.last <= m.Last {
 		return q.Reach != rulebook.Backward && m.Within(q.first, q.last)
 	}
@@ -81,6 +81,12 @@ func reaches(cues []cue, q cue, m rulebook.Match) bool {
 	}
 	if to-from > q.Words {
 		return false
+	}
+	for i := from; i <= to && i < len(d.Tokens); i++ {
+		// a semicolon ends every reach, a comma that of some
+		if b := d.Tokens[i].Break; b >= text.Clause || q.Clause && b != text.NoBreak {
+			return false
+		}
 	}
 	for _, e := range cues {
 		if e.Sense == rulebook.End && e.first >= from && e.last <= to {

@@ -43,7 +43,7 @@ func (c *Classifier) inTime(d *text.Doc, hits []hit) []placed {
 func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed {
 	var affirmed []int
 	for i, h := range hits {
-		if h.Assertion == corpus.Affirmed {
+		if h.Assertion == corpus.Affirmed && !c.standsFor(hits, h) {
 			affirmed = append(affirmed, i)
 		}
 	}
@@ -91,6 +91,14 @@ func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed 
 		}
 	}
 	return out
+}
+
+// standsFor tells whether the same words show a factor below h's: then that
+// one is the link, and stands for both.
+func (c *Classifier) standsFor(hits []hit, h hit) bool {
+	return slices.ContainsFunc(hits, func(o hit) bool {
+		return o.Assertion == corpus.Affirmed && o.Factor != h.Factor && o.Overlaps(h.Span) && c.book.Tree.Implies(o.Factor, h.Factor)
+	})
 }
 
 // chain merges the tellings: each factor once, at its first place. A cause

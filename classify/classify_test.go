@@ -89,7 +89,7 @@ func path(c corpus.Chain) string {
 
 func TestChainOrder(t *testing.T) {
 	for _, c := range []struct{ text, want, outcome, broken string }{
-		{"The left engine quit. The airspeed decayed and the aircraft stalled.", "power-loss slow-airspeed stall", "stall", ""},
+		{"The left engine quit. The airspeed decayed and the aircraft stalled.", "power-loss-total slow-airspeed stall", "stall", ""},
 		{"The aircraft stalled due to the student's failure to maintain airspeed.", "slow-airspeed stall", "stall", ""},
 		{"After the engine failure the airspeed decayed.", "power-loss slow-airspeed", "", ""},
 		{"The aircraft stalled. The instructor regained control.", "stall recovered", "stall", "recovered"},

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"slices"
 
+	"catena/classify/catalogue"
 	"catena/classify/rulebook"
 	"catena/classify/text"
 	"catena/ingest/corpus"
@@ -31,6 +32,7 @@ type hit struct {
 	corpus.Tag
 	sentence int
 	match    rulebook.Match
+	rule     *rulebook.Rule
 }
 
 // Tag finds the factors of an occurrence and its chain. Tags are in order of
@@ -59,13 +61,13 @@ func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
 	for n, s := range d.Sentences {
 		from := len(hits)
 		c.book.FindRules(d, s, func(r *rulebook.Rule, m rulebook.Match) {
-			if c.holds(r, d, n) {
+			if c.holds(r, d, n) && !rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last) {
 				hits = append(hits, hit{
 					Tag: corpus.Tag{
 						Factor: r.Factor, Basis: corpus.Told, Span: m.Shown, Quote: m.Shown.Of(d.Text),
 						Rule: r.ID, Strength: r.Strength, Side: side(c.book.Lexicon, r, d, s, m),
 					},
-					sentence: n, match: m,
+					sentence: n, match: m, rule: r,
 				})
 			}
 		})
@@ -74,11 +76,27 @@ func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
 		}
 		cues := c.cues(d, s)
 		for i := from; i < len(hits); i++ {
-			hits[i].Assertion = assertion(cues, hits[i].match, kind)
+			hits[i].Assertion = assertion(d, cues, hits[i].match, kind)
 		}
 		hits = append(hits[:from], distinct(hits[from:])...)
 	}
-	return hits
+	return c.inPlace(hits)
+}
+
+// inPlace drops the hits of rules that hold only after something else, where
+// nothing of that kind is affirmed before them: a safe landing is a recovery
+// only where there was something to recover from.
+func (c *Classifier) inPlace(hits []hit) []hit {
+	before := map[catalogue.Kind]bool{}
+	return slices.DeleteFunc(hits, func(h hit) bool {
+		if len(h.rule.After) > 0 && !slices.ContainsFunc(h.rule.After, func(k catalogue.Kind) bool { return before[k] }) {
+			return true
+		}
+		if f, ok := c.book.Tree.Factor(h.Factor); ok && h.Assertion == corpus.Affirmed {
+			before[f.Kind] = true
+		}
+		return false
+	})
 }
 
 // holds checks the conditions of a rule around sentence n.

@@ -45,10 +45,12 @@ type Rule struct {
 	Strength float64
 	Side     string // "engine" or "rudder": whose side the words around tell
 	Look     []*Pattern
-	With     []*Pattern // one of these must stand in the same sentence
-	Unless   []*Pattern // none of these may stand in the same sentence
-	Near     []*Pattern // one of these must stand in the same or a neighbouring sentence
-	Nowhere  []*Pattern // none of these may stand anywhere in the narrative
+	With     []*Pattern       // one of these must stand in the same sentence
+	Unless   []*Pattern       // none of these may stand in the same sentence
+	Near     []*Pattern       // one of these must stand in the same or a neighbouring sentence
+	Nowhere  []*Pattern       // none of these may stand anywhere in the narrative
+	PartOf   []*Pattern       // the match may not overlap one of these
+	After    []catalogue.Kind // an affirmed factor of one of these kinds must come before
 	Examples []Example
 	File     string
 	Line     int
@@ -65,10 +67,11 @@ type Example struct {
 
 // Cue is words that tell how what stands near them is spoken of.
 type Cue struct {
-	Sense Sense
-	Reach Reach
-	Words int // how many words it reaches
-	Look  []*Pattern
+	Sense  Sense
+	Reach  Reach
+	Words  int  // how many words it reaches
+	Clause bool // its reach ends at a comma
+	Look   []*Pattern
 }
 
 // Sense is what a cue says of the factors in its reach.
@@ -157,6 +160,8 @@ type ruleYAML struct {
 	Unless    []located `yaml:"unless"`
 	Near      []located `yaml:"near"`
 	Nowhere   []located `yaml:"nowhere"`
+	PartOf    []located `yaml:"not part of"`
+	After     []string  `yaml:"only after"`
 	Match     []located `yaml:"match"`
 	NoMatch   []located `yaml:"no match"`
 	Denied    []located `yaml:"denied"`
@@ -166,10 +171,11 @@ type ruleYAML struct {
 }
 
 type cueYAML struct {
-	Sense Sense     `yaml:"sense"`
-	Reach Reach     `yaml:"reach"`
-	Words int       `yaml:"words"`
-	Look  []located `yaml:"look for"`
+	Sense  Sense     `yaml:"sense"`
+	Within string    `yaml:"within"` // "clause" or nothing
+	Reach  Reach     `yaml:"reach"`
+	Words  int       `yaml:"words"`
+	Look   []located `yaml:"look for"`
 }
 
 //go:embed book/*.yaml
@@ -367,8 +373,16 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	for _, part := range []struct {
 		into *[]*Pattern
 		from []located
-	}{{&r.Look, y.Look}, {&r.With, y.With}, {&r.Unless, y.Unless}, {&r.Near, y.Near}, {&r.Nowhere, y.Nowhere}} {
+	}{{&r.Look, y.Look}, {&r.With, y.With}, {&r.Unless, y.Unless}, {&r.Near, y.Near}, {&r.Nowhere, y.Nowhere}, {&r.PartOf, y.PartOf}} {
 		*part.into = l.patterns(c, file, part.from)
+	}
+	for _, kind := range y.After {
+		switch k := catalogue.Kind(kind); k {
+		case catalogue.Trigger, catalogue.Response, catalogue.Condition, catalogue.Outcome, catalogue.Recovery:
+			r.After = append(r.After, k)
+		default:
+			l.fault(file, r.Line, "rule %q: only after: no such kind %q", id, kind)
+		}
 	}
 	if len(y.Look) == 0 {
 		l.fault(file, r.Line, "rule %q looks for nothing (look for: ...)", id)
@@ -395,8 +409,8 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 // patterns and each term below them.
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
-	fmt.Fprintf(h, "%s|%g|%s", id, y.Strength, y.Side)
-	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere} {
+	fmt.Fprintf(h, "%s|%g|%s|%v", id, y.Strength, y.Side, y.After)
+	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
 			fmt.Fprint(h, "\n", s.text)
@@ -445,7 +459,10 @@ func (l *loader) cue(c *compiler, file string, y cueYAML) *Cue {
 	default:
 		l.fault(file, line, "cue: no such reach %q", y.Reach)
 	}
-	return &Cue{Sense: y.Sense, Reach: y.Reach, Words: cmp.Or(y.Words, 8), Look: l.patterns(c, file, y.Look)}
+	if y.Within != "" && y.Within != "clause" {
+		l.fault(file, line, "cue: within %q: want clause, or leave it out", y.Within)
+	}
+	return &Cue{Sense: y.Sense, Reach: y.Reach, Words: cmp.Or(y.Words, 8), Clause: y.Within == "clause", Look: l.patterns(c, file, y.Look)}
 }
 
 // index finds, by the word at hand, the patterns that can begin with it.
@@ -507,6 +524,21 @@ func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 	return false
 }
 
+// Overlaps tells whether one of the patterns matches in the sentence over
+// some of the tokens first..last-1.
+func Overlaps(patterns []*Pattern, d *text.Doc, s text.Sentence, first, last int) bool {
+	for _, p := range patterns {
+		for i := s.First; i < last; i++ {
+			if slices.Contains(p.first, d.Tokens[i].Word) {
+				if m, ok := p.MatchAt(d, i, s.Last); ok && m.Last > first {
+					return true
+				}
+			}
+		}
+	}
+	return false
+}
+
 // UnusedTerms lists the terms that no rule, cue or other term uses.
 func (b *Book) UnusedTerms() []string {
 	used := map[string]bool{}
@@ -530,7 +562,7 @@ func (b *Book) mentions(name string) bool {
 		return slices.ContainsFunc(ps, func(p *Pattern) bool { return strings.Contains(p.Source, "{"+name+"}") })
 	}
 	for _, r := range b.Rules {
-		if has(r.Look) || has(r.With) || has(r.Unless) || has(r.Near) || has(r.Nowhere) {
+		if has(r.Look) || has(r.With) || has(r.Unless) || has(r.Near) || has(r.Nowhere) || has(r.PartOf) {
 			return true
 		}
 	}

@@ -57,12 +57,32 @@ var irregular = map[string]string{
 }
 
 // Inflect lists the forms of a word: the verb's from its base form, which
-// for most nouns are the right ones too (engine, engines). A form that does
-// not exist does no harm: nobody writes it.
+// for most nouns are the right ones too (engine, engines), and the adverb
+// (wrong, wrongly). A word cut before the e of -ate gives the noun as well
+// (simulat: simulate, simulated, simulation). A form that does not exist does
+// no harm: nobody writes it.
 func Inflect(base string) []string {
 	if forms, ok := irregular[base]; ok {
 		return strings.Fields(forms)
 	}
+	if stem, ok := strings.CutSuffix(base, "at"); ok && len(stem) >= 3 {
+		return []string{base + "e", base + "es", base + "ed", base + "ing", base + "ion", base + "ions", base + "or"}
+	}
+	return append(regular(base), adverb(base))
+}
+
+// adverb adds -ly.
+func adverb(base string) string {
+	switch {
+	case strings.HasSuffix(base, "le"):
+		return base[:len(base)-1] + "y"
+	case strings.HasSuffix(base, "y"):
+		return base[:len(base)-1] + "ily"
+	}
+	return base + "ly"
+}
+
+func regular(base string) []string {
 	n := len(base)
 	if n < 2 {
 		return []string{base}

@@ -24,9 +24,9 @@ import (
 //
 // A Pattern does not change after it is compiled and may be shared.
 type Pattern struct {
-	Source string
-	elems  []elem
-	first  []text.Word // words that a match can begin with
+	Source   string
+	variants [][]elem    // tried in turn; more than one where a group holds gaps
+	first    []text.Word // words that a match can begin with
 }
 
 type elemKind uint8
@@ -100,8 +100,17 @@ func (m Match) Within(first, last int) bool {
 // MatchAt tells whether the pattern matches at token i of a sentence that
 // ends before token last. Gaps are kept as short as possible.
 func (p *Pattern) MatchAt(d *text.Doc, i, last int) (Match, bool) {
+	for _, elems := range p.variants {
+		if m, ok := matchAt(elems, d, i, last); ok {
+			return m, true
+		}
+	}
+	return Match{}, false
+}
+
+func matchAt(elems []elem, d *text.Doc, i, last int) (Match, bool) {
 	m := matcher{d: d, last: last, start: -1, end: -1}
-	end, ok := m.run(p.elems, i, i)
+	end, ok := m.run(elems, i, i, true)
 	if !ok || end == i {
 		return Match{}, false
 	}
@@ -126,8 +135,10 @@ type matcher struct {
 }
 
 // run matches the elements from token i on; it returns the token after the
-// match. begin is where the whole match began.
-func (m *matcher) run(elems []elem, i, begin int) (int, bool) {
+// match. begin is where the whole match began. Neighbouring elements do not
+// stand on two sides of a comma, unless free: at the beginning, or behind a
+// gap that may cross one.
+func (m *matcher) run(elems []elem, i, begin int, free bool) (int, bool) {
 	if len(elems) == 0 {
 		return i, true
 	}
@@ -140,41 +151,41 @@ func (m *matcher) run(elems []elem, i, begin int) (int, bool) {
 		} else {
 			m.end = i
 		}
-		end, ok := m.run(rest, i, begin)
+		end, ok := m.run(rest, i, begin, free)
 		if !ok {
 			*m = save
 		}
 		return end, ok
 	case gap:
 		for n := 0; n <= e.max && i+n <= m.last; n++ {
-			if n > 0 && !e.cross && m.d.Tokens[i+n-1].Break != text.NoBreak && i+n-1 > begin {
+			if n > 0 && !e.cross && m.d.Tokens[i+n-1].Break != text.NoBreak {
 				return 0, false
 			}
 			save := m.loose
 			for k := i; k < i+n && k-begin < 64; k++ {
 				m.loose |= 1 << (k - begin)
 			}
-			if end, ok := m.run(rest, i+n, begin); ok {
+			if end, ok := m.run(rest, i+n, begin, e.cross); ok {
 				return end, true
 			}
 			m.loose = save
 		}
 		return 0, false
 	case phrases:
-		if i < m.last && e.fits(m.d, i) {
+		if i < m.last && (free || m.d.Tokens[i].Break == text.NoBreak) && e.fits(m.d, i) {
 			if end, ok := m.walk(e.trie, rest, i, i, begin); ok {
 				return end, true
 			}
 		}
 	case anyWord, number:
-		if i < m.last && (e.kind == anyWord || m.d.Tokens[i].Number) {
-			if end, ok := m.run(rest, i+1, begin); ok {
+		if i < m.last && (free || m.d.Tokens[i].Break == text.NoBreak) && (e.kind == anyWord || m.d.Tokens[i].Number) {
+			if end, ok := m.run(rest, i+1, begin, false); ok {
 				return end, true
 			}
 		}
 	}
 	if e.optional {
-		return m.run(rest, i, begin)
+		return m.run(rest, i, begin, free)
 	}
 	return 0, false
 }
@@ -192,7 +203,7 @@ func (m *matcher) walk(t *trie, rest []elem, from, i, begin int) (int, bool) {
 		}
 	}
 	if t.end {
-		return m.run(rest, i, begin)
+		return m.run(rest, i, begin, false)
 	}
 	return 0, false
 }
@@ -223,16 +234,71 @@ func (c *compiler) pattern(source string) (*Pattern, error) {
 	if err != nil {
 		return nil, err
 	}
+	sequences, err := spread(items)
+	if err != nil {
+		return nil, fmt.Errorf("pattern %q: %w", source, err)
+	}
+	seen := map[text.Word]bool{}
+	for _, items := range sequences {
+		if err := c.variant(p, items, seen); err != nil {
+			return nil, err
+		}
+	}
+	return p, nil
+}
+
+// maxVariants bounds what groups with gaps may multiply to.
+const maxVariants = 64
+
+// spread makes a sequence of each choice of the groups that hold gaps; the
+// other groups stay whole, since a trie finds them faster.
+func spread(items []string) ([][]string, error) {
+	out := [][]string{nil}
+	for _, item := range items {
+		choices := [][]string{{item}}
+		inner, isGroup := strings.CutPrefix(item, "(")
+		body, optional := strings.CutSuffix(inner, "?")
+		if isGroup && strings.HasSuffix(body, ")") && strings.Contains(body, "..") {
+			choices = nil
+			for _, choice := range alternatives(strings.TrimSuffix(body, ")")) {
+				parts, err := pieces(choice)
+				if err != nil {
+					return nil, err
+				}
+				choices = append(choices, parts)
+			}
+			if optional {
+				choices = append(choices, nil)
+			}
+		}
+		if len(out)*len(choices) > maxVariants {
+			return nil, fmt.Errorf("its groups with gaps stand for more than %d sequences", maxVariants)
+		}
+		var longer [][]string
+		for _, a := range out {
+			for _, b := range choices {
+				longer = append(longer, append(append([]string(nil), a...), b...))
+			}
+		}
+		out = longer
+	}
+	return out, nil
+}
+
+// variant compiles one sequence of a pattern.
+func (c *compiler) variant(p *Pattern, items []string, seen map[text.Word]bool) error {
+	source := p.Source
+	var elems []elem
 	for _, item := range items {
 		e, err := c.elem(item)
 		if err != nil {
-			return nil, err
+			return err
 		}
-		p.elems = append(p.elems, e)
+		elems = append(elems, e)
 	}
-	seen := map[text.Word]bool{}
+	p.variants = append(p.variants, elems)
 	open := true
-	for _, e := range p.elems {
+	for _, e := range elems {
 		if !open {
 			break
 		}
@@ -240,7 +306,7 @@ func (c *compiler) pattern(source string) (*Pattern, error) {
 		case markStart, markEnd:
 			continue
 		case gap, anyWord, number:
-			return nil, fmt.Errorf("pattern %q: begin with a word that must stand there, not with a gap", source)
+			return fmt.Errorf("pattern %q: begin with a word that must stand there, not with a gap", source)
 		}
 		for w := range e.trie.next {
 			if !seen[w] {
@@ -251,9 +317,9 @@ func (c *compiler) pattern(source string) (*Pattern, error) {
 		open = e.optional
 	}
 	if open {
-		return nil, fmt.Errorf("pattern %q: nothing in it must stand there", source)
+		return fmt.Errorf("pattern %q: nothing in it must stand there", source)
 	}
-	return p, nil
+	return nil
 }
 
 func (c *compiler) elem(item string) (elem, error) {

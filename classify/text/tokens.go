@@ -11,10 +11,11 @@ import (
 type Break uint8
 
 // The breaks, weakest first. In many voluntary reports a semicolon stands for
-// a comma, so the two are not told apart.
+// a comma: in a text that has semicolons and no commas.
 const (
 	NoBreak Break = iota
-	Comma         // , ; : ( ) or a dash
+	Comma         // , : ( ) or a dash, or a semicolon that stands for a comma
+	Clause        // a semicolon
 	Stop          // the token begins a sentence
 )
 
@@ -198,6 +199,10 @@ func contraction(s string, start, end int) []raw {
 // Analyse splits a text into tokens and sentences.
 func (l *Lexicon) Analyse(s string) *Doc {
 	d := &Doc{Text: s, Capitals: capitals(s)}
+	semicolon := Clause
+	if !strings.Contains(s, ", ") {
+		semicolon = Comma
+	}
 	raws := split(s)
 	d.Tokens = make([]Token, 0, len(raws)+8)
 	var lower [64]byte
@@ -208,7 +213,7 @@ func (l *Lexicon) Analyse(s string) *Doc {
 		if i == 0 {
 			t.Break = Stop
 		} else {
-			t.Break = boundary(s, prev, r, lastEnd, d.Capitals)
+			t.Break = boundary(s, prev, r, lastEnd, d.Capitals, semicolon)
 		}
 		prev, lastEnd = r, r.after
 		if side := l.sideLetter(s, raws, i); side != 0 {
