@@ -19,9 +19,11 @@ type telling struct {
 // placed is an affirmed tag of a narrative; byWords where the order rests on
 // words such as "due to" and not on the order of telling alone.
 type placed struct {
-	tag     int // index within the narrative's tags
-	factor  string
-	byWords bool
+	tag      int // index within the narrative's tags
+	factor   string
+	sentence int
+	byWords  bool
+	explains bool // told in a sentence that says what brought the event about
 }
 
 // inTime puts the affirmed hits of a narrative in order of time: the order of
@@ -41,56 +43,109 @@ func (c *Classifier) inTime(d *text.Doc, hits []hit) []placed {
 }
 
 func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed {
-	var affirmed []int
-	for i, h := range hits {
-		if h.Assertion == corpus.Affirmed && !c.standsFor(hits, h) {
-			affirmed = append(affirmed, i)
-		}
-	}
-	out := make([]placed, 0, len(affirmed))
+	affirmed := c.affirmed(hits)
 	if len(affirmed) == 0 {
-		return out
+		return nil
 	}
-	var turns []rulebook.Match
-	if len(affirmed) > 1 {
-		c.book.FindTurns(d, d.Sentences[hits[0].sentence], func(m rulebook.Match) { turns = append(turns, m) })
-	}
-	// the same words may show a condition and the outcome that it is: the
-	// condition comes first
-	for k := 1; k < len(affirmed); k++ {
-		for j := k; j > 0; j-- {
-			a, b := &hits[affirmed[j-1]], &hits[affirmed[j]]
-			if !a.Overlaps(b.Span) || c.rank(a.Factor) <= c.rank(b.Factor) {
-				break
-			}
-			affirmed[j-1], affirmed[j] = affirmed[j], affirmed[j-1]
-		}
-	}
-	// the turning words cut the sentence into parts, told latest first
-	part := 0
-	var parts [][]placed
+	n := hits[0].sentence
+	explains := rulebook.Stands(c.book.Explains, d, d.Sentences[n])
+	out := make([]placed, 0, len(affirmed))
+	t := c.turning(d, d.Sentences[n], len(affirmed) > 1)
+	from := 0 // where the present stretch begins in out
 	for _, i := range affirmed {
-		n := 0
-		for _, t := range turns {
-			if t.Last <= hits[i].match.First {
-				n++
-			}
-		}
-		if n != part || parts == nil {
-			parts = append(parts, nil)
-			part = n
-		}
-		last := len(parts) - 1
-		parts[last] = append(parts[last], placed{tag: base + i, factor: hits[i].Factor})
-	}
-	slices.Reverse(parts)
-	for _, p := range parts {
-		for _, h := range p {
-			h.byWords = len(parts) > 1
-			out = append(out, h)
+		p := placed{tag: base + i, factor: hits[i].Factor, sentence: n, explains: explains}
+		switch t.at(hits[i].match.First) {
+		case onward:
+			from = len(out)
+			out = append(out, p)
+		case turned:
+			p.byWords = len(out) > from
+			out = slices.Insert(out, from, p)
+			from++ // what is turned keeps its own order
+		default:
+			out = append(out, p)
 		}
 	}
 	return out
+}
+
+// affirmed lists the hits that become links, in order of place. The same
+// words may show a condition and the outcome that it is: the condition comes
+// first.
+func (c *Classifier) affirmed(hits []hit) []int {
+	var out []int
+	for i, h := range hits {
+		if h.Assertion != corpus.Affirmed || c.standsFor(hits, h) {
+			continue
+		}
+		out = append(out, i)
+		for j := len(out) - 1; j > 0; j-- {
+			a, b := &hits[out[j-1]], &hits[out[j]]
+			if !a.Overlaps(b.Span) || c.rank(a.Factor) <= c.rank(b.Factor) {
+				break
+			}
+			out[j-1], out[j] = out[j], out[j-1]
+		}
+	}
+	return out
+}
+
+// direction is how a stretch of a sentence stands in time to what was told
+// before it.
+type direction uint8
+
+const (
+	along  direction = iota // as told
+	turned                  // earlier: behind "due to", "after" ...
+	onward                  // later: behind "which resulted in" ...
+)
+
+// turns are the words of a sentence that turn the order round, or back.
+type turns []turn
+
+type turn struct {
+	first int // the first token that it governs
+	end   int // the token before which its reach ends
+	dir   direction
+}
+
+// turning finds the turning words of a sentence. What "due to" brings in
+// reaches to the next comma, or to words that lead onward.
+func (c *Classifier) turning(d *text.Doc, s text.Sentence, wanted bool) turns {
+	if !wanted {
+		return nil
+	}
+	var out turns
+	c.book.FindTurns(d, s, func(m rulebook.Match) {
+		end := m.Last
+		for end < s.Last && (end == m.Last || d.Tokens[end].Break == text.NoBreak) {
+			end++
+		}
+		if m.First > s.First { // "After the stall, ..." is told in order
+			out = append(out, turn{m.Last, end, turned})
+		}
+	})
+	c.book.FindOnward(d, s, func(m rulebook.Match) {
+		for i := range out {
+			if out[i].dir == turned && out[i].first <= m.First {
+				out[i].end = min(out[i].end, m.First)
+			}
+		}
+		out = append(out, turn{m.Last, s.Last, onward})
+	})
+	return out
+}
+
+// at tells the direction of what begins at token i: that of the nearest turn
+// ahead of it that reaches it.
+func (ts turns) at(i int) direction {
+	dir, nearest := along, -1
+	for _, t := range ts {
+		if t.first <= i && i < t.end && t.first > nearest {
+			dir, nearest = t.dir, t.first
+		}
+	}
+	return dir
 }
 
 // standsFor tells whether the same words show a factor below h's: then that
@@ -102,36 +157,74 @@ func (c *Classifier) standsFor(hits []hit, h hit) bool {
 }
 
 // chain merges the tellings: each factor once, at its first place. A cause
-// statement sums up, so it is folded in last: what only it tells goes before
-// the next factor of its own that the chain already holds.
+// statement sums up, so it is folded in last. What a sentence (or a summary)
+// adds to a chain goes before the next of its own factors that the chain
+// already holds; a trigger that is told as an explanation goes before what it
+// explains.
 func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 	links := []corpus.Link{}
-	have := func(factor string) int {
-		return slices.IndexFunc(links, func(l corpus.Link) bool { return l.Factor == factor })
-	}
 	slices.SortStableFunc(told, func(a, b telling) int { return summing(a.kind) - summing(b.kind) })
+	summary := len(told) > 0 && summing(told[0].kind) > 0 // nothing but summaries
 	for _, t := range told {
 		for i, p := range t.hits {
-			if have(p.factor) >= 0 {
+			if linked(links, p.factor) >= 0 {
 				continue
-			}
-			at := len(links)
-			for _, later := range t.hits[i+1:] {
-				if k := have(later.factor); k >= 0 {
-					at = k
-					break
-				}
 			}
 			order := "text"
 			if p.byWords {
 				order = "words"
 			}
-			links = slices.Insert(links, at, corpus.Link{Factor: p.factor, Tag: t.base + p.tag, Order: order})
+			links = slices.Insert(links, c.place(links, t, i), corpus.Link{Factor: p.factor, Tag: t.base + p.tag, Order: order})
 		}
+	}
+	c.settle(links, c.book.Always)
+	if summary {
+		c.settle(links, c.book.Usually)
 	}
 	chain := corpus.Chain{Links: links}
 	c.ending(&chain)
 	return chain
+}
+
+func linked(links []corpus.Link, factor string) int {
+	return slices.IndexFunc(links, func(l corpus.Link) bool { return l.Factor == factor })
+}
+
+// place finds where in the chain hit i of a telling belongs.
+func (c *Classifier) place(links []corpus.Link, t telling, i int) int {
+	p := t.hits[i]
+	at := len(links)
+	for _, later := range t.hits[i+1:] {
+		if k := linked(links, later.factor); k >= 0 && (summing(t.kind) > 0 || later.sentence == p.sentence) {
+			at = k
+			break
+		}
+	}
+	if p.explains && c.rank(p.factor) == 0 {
+		if k := slices.IndexFunc(links, func(l corpus.Link) bool { return c.rank(l.Factor) > 0 }); k >= 0 {
+			at = min(at, k)
+		}
+	}
+	return at
+}
+
+// settle moves links forward until no pair stands against the order given.
+func (c *Classifier) settle(links []corpus.Link, order []rulebook.Before) {
+	against := func(earlier, later string) bool {
+		return slices.ContainsFunc(order, func(b rulebook.Before) bool {
+			return c.book.Tree.Implies(later, b.First) && c.book.Tree.Implies(earlier, b.Then)
+		})
+	}
+	for j := range links {
+		for i := range j {
+			if against(links[i].Factor, links[j].Factor) {
+				l := links[j]
+				copy(links[i+1:j+1], links[i:j])
+				links[i] = l
+				break
+			}
+		}
+	}
 }
 
 // summing ranks the kinds of narrative that tell the event a second time.

@@ -74,7 +74,7 @@ func Open(dir string, o Options) (*Index, error) {
 	}
 	x = &Index{bleve: b, analyzer: newAnalyzer()}
 	batch := b.NewBatch()
-	if err := x.mark(batch, 0); err == nil {
+	if err = x.mark(batch, 0); err == nil {
 		err = b.Batch(batch)
 	}
 	if err != nil {

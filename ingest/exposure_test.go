@@ -7,11 +7,11 @@ import (
 )
 
 func TestReadExposure(t *testing.T) {
-	got, err := ReadExposure(strings.NewReader("\ufeffperiod,hours,place,covers\n2021-05,\"1,410.5\",Tarnwick,tarnwick\n\n2021-Q3,,Sellow,\n"), "h.csv", "sellow", []string{"place"})
+	_, err := ReadExposure(strings.NewReader("\ufeffperiod,hours,place,covers\n2021-05,\"1,410.5\",Tarnwick,tarnwick\n\n2021-Q3,,Sellow,\n"), "h.csv", "sellow", []string{"place"})
 	if err == nil || !strings.Contains(err.Error(), "h.csv:4: neither hours nor departures") {
 		t.Errorf("an amount without a number: %v", err)
 	}
-	got, err = ReadExposure(strings.NewReader("period,hours,place,covers\n2021-05,\"1,410.5\",Tarnwick,tarnwick\n2021-Q3,7,Sellow,\n"), "h.csv", "sellow", []string{"place"})
+	got, err := ReadExposure(strings.NewReader("period,hours,place,covers\n2021-05,\"1,410.5\",Tarnwick,tarnwick\n2021-Q3,7,Sellow,\n"), "h.csv", "sellow", []string{"place"})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -23,17 +23,22 @@ import (
 
 // Book is a compiled rule book. It does not change after Load.
 type Book struct {
-	Version string // hash of all that the book holds, 12 hexadecimal digits
-	Tree    *catalogue.Tree
-	Lexicon *text.Lexicon
-	Rules   []*Rule
-	Cues    []*Cue
-	Turns   []*Pattern // words after which the earlier event is told
+	Version  string // hash of all that the book holds, 12 hexadecimal digits
+	Tree     *catalogue.Tree
+	Lexicon  *text.Lexicon
+	Rules    []*Rule
+	Cues     []*Cue
+	Turns    []*Pattern // words after which the earlier event is told
+	Onward   []*Pattern // words after which the later event is told
+	Explains []*Pattern // words of a sentence that tells what brought an event about
+	Always   []Before   // what comes first in time, however it is told
+	Usually  []Before   // what comes first where an event is summed up
 
-	rules index[*Rule]
-	cues  index[*Cue]
-	turns index[struct{}]
-	terms map[string]*term
+	rules  index[*Rule]
+	cues   index[*Cue]
+	turns  index[struct{}]
+	onward index[struct{}]
+	terms  map[string]*term
 }
 
 // Rule finds one factor.
@@ -94,6 +99,9 @@ const (
 	Whole    Reach = "sentence"
 )
 
+// Before says that one factor (or one below it) comes before another in time.
+type Before struct{ First, Then string }
+
 // Fault is an error in a rule file.
 type Fault struct {
 	File string
@@ -141,11 +149,15 @@ func (l *located) UnmarshalYAML(n ast.Node) error {
 }
 
 type fileYAML struct {
-	Terms  map[string][]located `yaml:"terms"`
-	Factor located              `yaml:"factor"`
-	Rules  []ruleYAML           `yaml:"rules"`
-	Cues   []cueYAML            `yaml:"cues"`
-	Order  []located            `yaml:"order"`
+	Terms    map[string][]located `yaml:"terms"`
+	Factor   located              `yaml:"factor"`
+	Rules    []ruleYAML           `yaml:"rules"`
+	Cues     []cueYAML            `yaml:"cues"`
+	Order    []located            `yaml:"order"`
+	Onward   []located            `yaml:"onward"`
+	Explains []located            `yaml:"explains"`
+	Always   []located            `yaml:"always"`
+	Usually  []located            `yaml:"in summaries"`
 }
 
 type ruleYAML struct {
@@ -311,6 +323,10 @@ func (l *loader) compile() {
 			b.Cues = append(b.Cues, l.cue(c, l.names[i], y))
 		}
 		b.Turns = append(b.Turns, l.patterns(c, l.names[i], f.Order)...)
+		b.Onward = append(b.Onward, l.patterns(c, l.names[i], f.Onward)...)
+		b.Explains = append(b.Explains, l.patterns(c, l.names[i], f.Explains)...)
+		b.Always = append(b.Always, l.befores(l.names[i], f.Always)...)
+		b.Usually = append(b.Usually, l.befores(l.names[i], f.Usually)...)
 	}
 	// terms that no rule uses are compiled all the same, so that their faults show
 	for name := range b.terms {
@@ -327,8 +343,32 @@ func (l *loader) compile() {
 		b.cues.add(cue, cue.Look)
 	}
 	b.turns.add(struct{}{}, b.Turns)
+	b.onward = newIndex[struct{}](size)
+	b.onward.add(struct{}{}, b.Onward)
 	slices.SortFunc(l.faults, func(a, b error) int { return cmp.Compare(a.Error(), b.Error()) })
 	l.faults = slices.CompactFunc(l.faults, func(a, b error) bool { return a.Error() == b.Error() })
+}
+
+// befores reads "a < b, c".
+func (l *loader) befores(file string, lines []located) []Before {
+	var out []Before
+	for _, s := range lines {
+		first, rest, ok := strings.Cut(s.text, "<")
+		if !ok {
+			l.fault(file, s.line, "%q: want FACTOR < FACTOR, FACTOR ...", s.text)
+			continue
+		}
+		for _, then := range strings.Split(rest, ",") {
+			b := Before{strings.TrimSpace(first), strings.TrimSpace(then)}
+			for _, id := range []string{b.First, b.Then} {
+				if _, known := l.book.Tree.Factor(id); !known {
+					l.fault(file, s.line, "the catalogue has no factor %q", id)
+				}
+			}
+			out = append(out, b)
+		}
+	}
+	return out
 }
 
 func (l *loader) termFault(name string, err error) {
@@ -500,6 +540,12 @@ func (b *Book) FindTurns(d *text.Doc, s text.Sentence, found func(Match)) {
 	find(b.turns, d, s, func(_ struct{}, m Match) { found(m) })
 }
 
+// FindOnward calls found for every word in the sentence after which something
+// later is told.
+func (b *Book) FindOnward(d *text.Doc, s text.Sentence, found func(Match)) {
+	find(b.onward, d, s, func(_ struct{}, m Match) { found(m) })
+}
+
 func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match)) {
 	for i := s.First; i < s.Last; i++ {
 		for _, e := range x[d.Tokens[i].Word] {
@@ -566,5 +612,5 @@ func (b *Book) mentions(name string) bool {
 			return true
 		}
 	}
-	return has(b.Turns) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
+	return has(b.Turns) || has(b.Onward) || has(b.Explains) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
 }
