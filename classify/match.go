@@ -80,6 +80,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
 		}
 		hits = append(hits[:from], distinct(hits[from:])...)
 	}
+	inherit(c.book.Lexicon, d, hits)
 	return c.inPlace(hits)
 }
 

@@ -31,6 +31,44 @@ func side(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, s text.Sentence, m r
 	return sideWithin(lex, r, d, from, to)
 }
 
+// inherit gives the side of the engine to the hits around which none is told,
+// where the narrative speaks of one engine's side only.
+func inherit(lex *text.Lexicon, d *text.Doc, hits []hit) {
+	only := ""
+	for i := range d.Tokens {
+		if !engineWords[lex.Name(d.Tokens[i].Word)] {
+			continue
+		}
+		for k := i; k >= max(0, i-4) && d.Tokens[k].Break != text.Stop; k-- {
+			switch here := sideName(lex, d.Tokens[k].Word); {
+			case here == "":
+			case only != "" && only != here:
+				return // both sides are spoken of
+			default:
+				only = here
+			}
+		}
+	}
+	for i := range hits {
+		if h := &hits[i]; h.Side == "" && h.rule.Side == "engine" && only != "" {
+			h.Side = only
+		}
+	}
+}
+
+var engineWords = map[string]bool{"engine": true, "motor": true, "engine's": true, "propeller": true, "throttle": true, "powerplant": true}
+
+// sideName reads left or right, for an engine also No. 1 and No. 2.
+func sideName(lex *text.Lexicon, w text.Word) string {
+	switch lex.Name(w) {
+	case "left", "no1":
+		return "left"
+	case "right", "no2":
+		return "right"
+	}
+	return ""
+}
+
 // joined tells whether "and" or "or" stands between two sides, as in "the
 // left and right engines".
 func joined(lex *text.Lexicon, d *text.Doc, from, to int) bool {
