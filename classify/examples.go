@@ -35,6 +35,15 @@ func (c *Classifier) example(r *rulebook.Rule, e rulebook.Example) string {
 			}
 		})
 	}
+	if len(r.After) > 0 {
+		others := slices.DeleteFunc(c.narrative(d, ""), func(h hit) bool { return h.rule == r })
+		hits = slices.DeleteFunc(hits, func(h hit) bool {
+			return !slices.ContainsFunc(others, func(o hit) bool {
+				f, _ := c.book.Tree.Factor(o.Factor)
+				return o.Start < h.Start && o.Assertion == corpus.Affirmed && slices.Contains(r.After, f.Kind)
+			})
+		})
+	}
 	switch {
 	case e.Want == "" && len(hits) > 0:
 		return fmt.Sprintf("must not match, but %q does", hits[0].Of(e.Text))
