@@ -42,7 +42,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 	var told []telling
 	for n, narrative := range o.Narratives {
 		d := c.book.Lexicon.Analyse(narrative.Text)
-		hits := c.narrative(d, narrative.Kind)
+		hits := c.narrative(d, narrative.Kind, twin(o))
 		for i := range hits {
 			hits[i].Narrative = n
 		}
@@ -56,7 +56,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 }
 
 // narrative finds the tags of one text, in order of place.
-func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
+func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 	var hits []hit
 	for n, s := range d.Sentences {
 		from := len(hits)
@@ -64,7 +64,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
 			if c.holds(r, d, n) && !rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last) {
 				hits = append(hits, hit{
 					Tag: corpus.Tag{
-						Factor: r.Factor, Basis: corpus.Told, Span: m.Shown, Quote: m.Shown.Of(d.Text),
+						Factor: r.Factor, Basis: basis(r), Span: m.Shown, Quote: m.Shown.Of(d.Text),
 						Rule: r.ID, Strength: r.Strength, Side: side(c.book.Lexicon, r, d, s, m),
 					},
 					sentence: n, match: m, rule: r,
@@ -81,7 +81,15 @@ func (c *Classifier) narrative(d *text.Doc, kind string) []hit {
 		hits = append(hits[:from], distinct(hits[from:])...)
 	}
 	inherit(c.book.Lexicon, d, hits)
-	return c.inPlace(hits)
+	return c.inPlace(onDeadSide(c.book, d, hits, twin))
+}
+
+// basis is what a rule's tags rest on.
+func basis(r *rulebook.Rule) corpus.Basis {
+	if r.DeadSide {
+		return corpus.Inferred
+	}
+	return corpus.Told
 }
 
 // inPlace drops the hits of rules that hold only after something else, where

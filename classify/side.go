@@ -69,18 +69,17 @@ func sideName(lex *text.Lexicon, w text.Word) string {
 	return ""
 }
 
-// joined tells whether "and" or "or" stands between two sides, as in "the
-// left and right engines".
+// joined tells whether "and" or "or" stands between left and right, as in
+// "the left and right engines".
 func joined(lex *text.Lexicon, d *text.Doc, from, to int) bool {
-	side := false
-	link := false
+	before, link := "", false
 	for i := from; i < to; i++ {
-		switch lex.Name(d.Tokens[i].Word) {
+		switch name := lex.Name(d.Tokens[i].Word); name {
 		case "left", "right":
-			if side && link {
+			if before != "" && before != name && link {
 				return true
 			}
-			side, link = true, false
+			before, link = name, false
 		case "and", "or":
 			link = true
 		}

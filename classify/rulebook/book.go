@@ -34,6 +34,8 @@ type Book struct {
 	Always   []Before   // what comes first in time, however it is told
 	Usually  []Before   // what comes first where an event is summed up
 
+	LandingRoll []*Pattern // words of a landing roll, where an engine has no dead side
+
 	rules  index[*Rule]
 	cues   index[*Cue]
 	turns  index[struct{}]
@@ -48,7 +50,8 @@ type Rule struct {
 	Says     string // what it means that this rule found something
 	Hash     string // of the rule with every term that it uses
 	Strength float64
-	Side     string // "engine" or "rudder": whose side the words around tell
+	Side     string // "engine", "rudder" or "motion": whose side the words around tell
+	DeadSide bool   // holds only on the side of an engine that failed before, and is inferred
 	Look     []*Pattern
 	With     []*Pattern       // one of these must stand in the same sentence
 	Unless   []*Pattern       // none of these may stand in the same sentence
@@ -158,6 +161,7 @@ type fileYAML struct {
 	Explains []located            `yaml:"explains"`
 	Always   []located            `yaml:"always"`
 	Usually  []located            `yaml:"in summaries"`
+	Landing  []located            `yaml:"landing roll"`
 }
 
 type ruleYAML struct {
@@ -166,6 +170,7 @@ type ruleYAML struct {
 	Says      string    `yaml:"says"`
 	Strength  float64   `yaml:"strength"`
 	Side      string    `yaml:"side"`
+	DeadSide  bool      `yaml:"on the dead side"`
 	Off       bool      `yaml:"off"`
 	Look      []located `yaml:"look for"`
 	With      []located `yaml:"with"`
@@ -327,6 +332,7 @@ func (l *loader) compile() {
 		b.Explains = append(b.Explains, l.patterns(c, l.names[i], f.Explains)...)
 		b.Always = append(b.Always, l.befores(l.names[i], f.Always)...)
 		b.Usually = append(b.Usually, l.befores(l.names[i], f.Usually)...)
+		b.LandingRoll = append(b.LandingRoll, l.patterns(c, l.names[i], f.Landing)...)
 	}
 	// terms that no rule uses are compiled all the same, so that their faults show
 	for name := range b.terms {
@@ -400,14 +406,17 @@ func (l *loader) patterns(c *compiler, file string, sources []located) []*Patter
 
 func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	r := &Rule{
-		ID: id, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
+		ID: id, DeadSide: y.DeadSide, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
 		File: file, Line: y.Name.line,
 	}
 	if r.Strength < 0 || r.Strength > 1 {
 		l.fault(file, r.Line, "rule %q: strength %g is not between 0 and 1", id, r.Strength)
 	}
-	if r.Side != "" && r.Side != "engine" && r.Side != "rudder" {
-		l.fault(file, r.Line, "rule %q: side %q: want engine or rudder", id, r.Side)
+	if r.Side != "" && r.Side != "engine" && r.Side != "rudder" && r.Side != "motion" {
+		l.fault(file, r.Line, "rule %q: side %q: want engine, rudder or motion", id, r.Side)
+	}
+	if r.DeadSide && (r.Side == "" || r.Side == "engine") {
+		l.fault(file, r.Line, "rule %q: on the dead side wants side: rudder or motion", id)
 	}
 	clear(c.used)
 	for _, part := range []struct {
@@ -449,7 +458,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 // patterns and each term below them.
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
-	fmt.Fprintf(h, "%s|%g|%s|%v", id, y.Strength, y.Side, y.After)
+	fmt.Fprintf(h, "%s|%g|%s|%v|%t", id, y.Strength, y.Side, y.After, y.DeadSide)
 	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
@@ -612,5 +621,5 @@ func (b *Book) mentions(name string) bool {
 			return true
 		}
 	}
-	return has(b.Turns) || has(b.Onward) || has(b.Explains) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
+	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
 }
