@@ -48,10 +48,10 @@ func ReadExposure(in io.Reader, name, covers string, fields []string) ([]corpus.
 			}
 			return out, nil
 		}
-		line, _ := r.FieldPos(0)
 		if err != nil {
 			return nil, fmt.Errorf("%s: %w", name, err)
 		}
+		line, _ := r.FieldPos(0)
 		if len(cells) == 1 && strings.TrimSpace(cells[0]) == "" {
 			continue
 		}

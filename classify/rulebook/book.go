@@ -205,15 +205,20 @@ var Builtin = sync.OnceValues(func() (*Book, error) { return Load(catalogue.Buil
 // further folder: a term or a rule of the same name replaces the earlier one.
 // The error joins every fault that was found.
 func Load(tree *catalogue.Tree, folders ...fs.FS) (*Book, error) {
-	l := &loader{
-		book:  &Book{Tree: tree, Lexicon: text.NewLexicon(), terms: map[string]*term{}},
-		rules: map[string]*ruleYAML{}, files: map[string]string{}, hash: sha256.New().Sum(nil),
-	}
 	builtin, err := fs.Sub(files, "book")
 	if err != nil {
 		return nil, err
 	}
-	for _, folder := range append([]fs.FS{builtin}, folders...) {
+	return load(tree, append([]fs.FS{builtin}, folders...)...)
+}
+
+// load reads and compiles the given folders and no others.
+func load(tree *catalogue.Tree, folders ...fs.FS) (*Book, error) {
+	l := &loader{
+		book:  &Book{Tree: tree, Lexicon: text.NewLexicon(), terms: map[string]*term{}},
+		rules: map[string]*ruleYAML{}, files: map[string]string{}, hash: sha256.New().Sum(nil),
+	}
+	for _, folder := range folders {
 		if err := l.read(folder); err != nil {
 			return nil, err
 		}

@@ -25,14 +25,14 @@ func TestInflect(t *testing.T) {
 // book compiles one rule that looks for a pattern.
 func book(t *testing.T, pattern, more string) *Book {
 	t.Helper()
-	b, err := load(pattern, more)
+	b, err := probe(pattern, more)
 	if err != nil {
 		t.Fatal(err)
 	}
 	return b
 }
 
-func load(pattern, more string) (*Book, error) {
+func probe(pattern, more string) (*Book, error) {
 	file := "terms:\n  machine: [glider, \"tug plane\"]\n" + more + "factor: stall\nrules:\n  - rule: probe\n    look for: [" +
 		pattern + "]\n    match: [x]\n"
 	return Load(catalogue.Builtin(), fstest.MapFS{"probe.yaml": {Data: []byte(file)}})
@@ -85,7 +85,7 @@ func TestFaultsNameFileAndLine(t *testing.T) {
 		"gap of no size":      {`"nose ..x dropped"`, "", "want .. or ..."},
 		"text where a number": {`[1]`, "", "probe.yaml"},
 	} {
-		_, err := load(c.pattern, c.more)
+		_, err := probe(c.pattern, c.more)
 		if err == nil || !strings.Contains(err.Error(), c.want) {
 			t.Errorf("%s: %v, want %q", name, err, c.want)
 		}
@@ -151,7 +151,7 @@ func FuzzLoad(f *testing.F) {
 	f.Add("factor: stall\nrules:\n  - rule: a\n    look for: [\"{x} (a|b) ..3 [ c~ ]\"]\n    match: [\"a c\"]\nterms:\n  x: [y, \"z (p|q)?\"]\n")
 	f.Add("cues:\n  - sense: denied\n    look for: [\"no\"]\norder: [\"due to\"]\n")
 	f.Fuzz(func(t *testing.T, s string) {
-		b, err := Load(catalogue.Builtin(), fstest.MapFS{"f.yaml": {Data: []byte(s)}})
+		b, err := load(catalogue.Builtin(), fstest.MapFS{"f.yaml": {Data: []byte(s)}})
 		if err != nil {
 			return
 		}

@@ -13,6 +13,7 @@ import (
 	"catena/ingest/corpus"
 	"catena/ingest/store"
 	"catena/queries"
+	"catena/queries/filter"
 )
 
 type findOptions struct {
@@ -81,7 +82,11 @@ func runFind(cmd *cobra.Command, g *globalOptions, o *findOptions, query string)
 	if err != nil {
 		return err
 	}
-	return printHits(cmd, g, c, result, o)
+	show := hitPrinter{cmd: cmd, c: c, o: o, json: g.as == "json"}
+	if strings.TrimSpace(query) == "" && scope.Only != nil {
+		show.factors = filter.Factors(scope.Only)
+	}
+	return show.print(result)
 }
 
 // hitJSON is one hit as --as json prints it.
@@ -100,32 +105,61 @@ type snippetJSON struct {
 	Highlights []corpus.Span `json:"highlights"`
 }
 
-func printHits(cmd *cobra.Command, g *globalOptions, c *collection.Collection, result *index.Result, o *findOptions) error {
-	out := cmd.OutOrStdout()
+// hitPrinter prints what was found. factors are those of a filter without
+// words: their sentences stand in the place of snippets.
+type hitPrinter struct {
+	cmd     *cobra.Command
+	c       *collection.Collection
+	o       *findOptions
+	json    bool
+	factors []string
+}
+
+func (p hitPrinter) print(result *index.Result) error {
+	out := p.cmd.OutOrStdout()
 	hits := []hitJSON{}
 	for i, h := range result.Hits {
-		r, err := c.Store.One(cmd.Context(), h.Key)
+		r, err := p.c.Store.One(p.cmd.Context(), h.Key)
 		if err != nil {
 			return err
 		}
-		if g.as == "json" {
+		if evidence := p.evidence(r); len(evidence) > 0 {
+			h.Snippets = evidence
+		}
+		if p.json {
 			hits = append(hits, jsonHit(r, h))
 			continue
 		}
 		if i > 0 {
 			fmt.Fprintln(out)
 		}
-		fmt.Fprintf(out, "%d. %s\n", o.offset+i+1, headline(r))
+		fmt.Fprintf(out, "%d. %s\n", p.o.offset+i+1, headline(r))
 		for _, s := range h.Snippets {
 			fmt.Fprintf(out, "   %s\n", highlight(r.Narratives[s.Narrative].Text, s, colour(out)))
 		}
 	}
-	if g.as == "json" {
+	if p.json {
 		e := json.NewEncoder(out)
 		e.SetEscapeHTML(false)
 		return e.Encode(map[string]any{"total": result.Total, "hits": hits})
 	}
-	return printTotal(cmd.ErrOrStderr(), result, o)
+	return printTotal(p.cmd.ErrOrStderr(), result, p.o)
+}
+
+// evidence finds the sentence behind each factor that the filter asks for.
+func (p hitPrinter) evidence(r *store.Row) []index.Snippet {
+	var out []index.Snippet
+	book := p.c.Classifier.Book()
+	for _, f := range p.factors {
+		for _, t := range r.Tags {
+			if t.Assertion == corpus.Affirmed && book.Tree.Implies(t.Factor, f) {
+				text := r.Narratives[t.Narrative].Text
+				out = append(out, index.Snippet{Narrative: t.Narrative, Span: queries.SentenceFinder(book.Lexicon, text)(t.Span), Highlights: []corpus.Span{t.Span}})
+				break
+			}
+		}
+	}
+	return out
 }
 
 func printTotal(w io.Writer, result *index.Result, o *findOptions) error {

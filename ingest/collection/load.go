@@ -21,6 +21,7 @@ type LoadOptions struct {
 	Source string // names the source of all occurrences
 	Dates  string // order of dates of three numbers: dmy, mdy or ymd
 	Stdin  io.Reader
+	Name   string // what to call standard input where rows are traced back; "" for "-"
 	// Progress is told, after each batch, how far the file has been read, in
 	// bytes on disk; size is 0 where it is not known.
 	Progress func(path string, rows int, read, size int64)
@@ -200,6 +201,9 @@ func (l *loading) tag(ctx context.Context, j *job) {
 	}
 	j.put.Hash = ingest.ContentHash(o)
 	j.put.Source, j.put.Raw = j.item.Source, j.item.Raw
+	if l.opts.Name != "" {
+		j.put.Source.File = l.opts.Name
+	}
 	if j.known, j.err = l.c.Store.Known(ctx, o.Source, o.ID, j.put.Hash); j.err != nil || j.known {
 		return
 	}

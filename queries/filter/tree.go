@@ -185,6 +185,17 @@ func Fields(n Node) []string {
 	return out
 }
 
+// Factors are the factors that a filter asks about, in its order.
+func Factors(n Node) []string {
+	var out []string
+	walk(n, func(n Node) {
+		if f, ok := n.(*Factor); ok && !slices.Contains(out, f.ID) {
+			out = append(out, f.ID)
+		}
+	})
+	return out
+}
+
 func walk(n Node, visit func(Node)) {
 	visit(n)
 	switch n := n.(type) {
