@@ -264,13 +264,24 @@ func (l *loader) read(folder fs.FS) error {
 		sum.Write(data)
 		l.hash = sum.Sum(nil)
 		var file fileYAML
-		if err := yaml.UnmarshalWithOptions(data, &file, yaml.Strict()); err != nil {
+		if err := decode(data, &file); err != nil {
 			l.fault(name, yamlLine(err), "%s", strings.TrimSpace(yaml.FormatError(err, false, true)))
 			continue
 		}
 		l.add(name, file)
 	}
 	return nil
+}
+
+// decode reads a rule file. The library can panic on a malformed document
+// (a tag without a value, say); that is an error like another.
+func decode(data []byte, file *fileYAML) (err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			err = fmt.Errorf("not a rule file: the YAML cannot be read (%v)", p)
+		}
+	}()
+	return yaml.UnmarshalWithOptions(data, file, yaml.Strict())
 }
 
 // yamlLine finds the line of a YAML error, 1 where it does not tell.
