@@ -61,7 +61,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 	for n, s := range d.Sentences {
 		from := len(hits)
 		c.book.FindRules(d, s, func(r *rulebook.Rule, m rulebook.Match) {
-			if c.holds(r, d, n) && !rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last) {
+			if reads(r, kind) && c.holds(r, d, n) && !rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last) {
 				hits = append(hits, hit{
 					Tag: corpus.Tag{
 						Factor: r.Factor, Basis: basis(r), Span: m.Shown, Quote: m.Shown.Of(d.Text),
@@ -82,6 +82,11 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 	}
 	inherit(c.book.Lexicon, d, hits)
 	return c.inPlace(onDeadSide(c.book, d, hits, twin))
+}
+
+// reads tells whether a rule reads narratives of a kind.
+func reads(r *rulebook.Rule, kind string) bool {
+	return len(r.Kinds) == 0 || slices.Contains(r.Kinds, kind)
 }
 
 // basis is what a rule's tags rest on.

@@ -50,8 +50,9 @@ type Rule struct {
 	Says     string // what it means that this rule found something
 	Hash     string // of the rule with every term that it uses
 	Strength float64
-	Side     string // "engine", "rudder" or "motion": whose side the words around tell
-	DeadSide bool   // holds only on the side of an engine that failed before, and is inferred
+	Side     string   // "engine", "rudder" or "motion": whose side the words around tell
+	Kinds    []string // kinds of narrative that it reads; none for all
+	DeadSide bool     // holds only on the side of an engine that failed before, and is inferred
 	Look     []*Pattern
 	With     []*Pattern       // one of these must stand in the same sentence
 	Unless   []*Pattern       // none of these may stand in the same sentence
@@ -171,6 +172,7 @@ type ruleYAML struct {
 	Strength  float64   `yaml:"strength"`
 	Side      string    `yaml:"side"`
 	DeadSide  bool      `yaml:"on the dead side"`
+	Kinds     []string  `yaml:"only in"`
 	Off       bool      `yaml:"off"`
 	Look      []located `yaml:"look for"`
 	With      []located `yaml:"with"`
@@ -422,7 +424,7 @@ func (l *loader) patterns(c *compiler, file string, sources []located) []*Patter
 
 func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	r := &Rule{
-		ID: id, DeadSide: y.DeadSide, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
+		ID: id, DeadSide: y.DeadSide, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
 		File: file, Line: y.Name.line,
 	}
 	if r.Strength < 0 || r.Strength > 1 {
@@ -474,7 +476,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 // patterns and each term below them.
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
-	fmt.Fprintf(h, "%s|%g|%s|%v|%t", id, y.Strength, y.Side, y.After, y.DeadSide)
+	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.Kinds)
 	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
