@@ -113,7 +113,7 @@ func loadDemo(cmd *cobra.Command, g *globalOptions) error {
 			Stdin: bytes.NewReader(data),
 			Name:  strings.TrimPrefix(name, "demo/"),
 			Progress: func(_ string, rows int, read, _ int64) {
-				bar.show("building the demo", read, int64(len(data)), "bytes")
+				bar.show("building the demo", read, int64(len(data)))
 			},
 		})
 		if err != nil {

@@ -130,7 +130,7 @@ func exportRows(cmd *cobra.Command, c *collection.Collection, w io.Writer, lines
 			}
 		}
 		if n++; n%1000 == 0 {
-			bar.show("writing", int64(n), 0, "")
+			bar.show("writing", int64(n), 0)
 		}
 	}
 	return nil

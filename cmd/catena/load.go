@@ -79,7 +79,7 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 		sum, err := c.Load(cmd.Context(), path, collection.LoadOptions{
 			Source: o.source, Dates: o.dates, Stdin: cmd.InOrStdin(),
 			Progress: func(path string, rows int, read, size int64) {
-				bar.show(filepath.Base(path), read, size, "bytes")
+				bar.show(filepath.Base(path), read, size)
 				bar.describe(fmt.Sprintf("%s: %d rows, %.0f a second", filepath.Base(path), rows, float64(rows)/time.Since(begun).Seconds()))
 			},
 			Aside: func(a *corpus.SetAside) {

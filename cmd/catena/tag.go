@@ -69,7 +69,7 @@ func runTag(cmd *cobra.Command, g *globalOptions, o *tagOptions) error {
 		return err
 	}
 	bar := newProgress(cmd.ErrOrStderr())
-	n, err := c.Retag(cmd.Context(), o.again, func(n int) { bar.show("tagging", int64(n), int64(totals.Occurrences), "") })
+	n, err := c.Retag(cmd.Context(), o.again, func(n int) { bar.show("tagging", int64(n), int64(totals.Occurrences)) })
 	bar.finish()
 	if err != nil {
 		return err
@@ -165,7 +165,7 @@ func writeStream(cmd *cobra.Command, order <-chan *streamed) error {
 			_, fault = out.Write(s.line)
 		}
 		if n++; n%500 == 0 {
-			bar.show(fmt.Sprintf("tagging, %.0f a second", float64(n)/time.Since(begun).Seconds()), int64(n), 0, "")
+			bar.show(fmt.Sprintf("tagging, %.0f a second", float64(n)/time.Since(begun).Seconds()), int64(n), 0)
 		}
 	}
 	if fault == nil {

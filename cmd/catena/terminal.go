@@ -55,7 +55,7 @@ func newProgress(w io.Writer) *progress {
 }
 
 // show draws done of total units; total 0 means unknown.
-func (p *progress) show(label string, done, total int64, unit string) {
+func (p *progress) show(label string, done, total int64) {
 	if p.w == nil {
 		return
 	}
@@ -68,7 +68,7 @@ func (p *progress) show(label string, done, total int64, unit string) {
 		p.bar = progressbar.NewOptions64(total,
 			progressbar.OptionSetWriter(p.w), progressbar.OptionSetDescription(label), progressbar.OptionSetWidth(24),
 			progressbar.OptionThrottle(100*time.Millisecond), progressbar.OptionClearOnFinish(), progressbar.OptionSetPredictTime(true),
-			progressbar.OptionSetElapsedTime(true), progressbar.OptionShowBytes(unit == "bytes"), progressbar.OptionShowCount(),
+			progressbar.OptionSetElapsedTime(true),
 			progressbar.OptionFullWidth(), progressbar.OptionUseANSICodes(true))
 	}
 	p.bar.Set64(done)
