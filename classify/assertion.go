@@ -45,19 +45,20 @@ func (c *Classifier) cues(d *text.Doc, s text.Sentence) []cue {
 //
 // Where several cues reach, another flight outweighs advice, advice outweighs
 // a denial, and a denial outweighs a possibility. In a cause statement what
-// is offered as possible is the stated cause, and counts as affirmed.
-func assertion(d *text.Doc, cues []cue, m rulebook.Match, kind string) corpus.Assertion {
-	found := corpus.Affirmed
-	for _, q := range cues {
+// is offered as possible is the stated cause, and counts as affirmed. The
+// second result is the cue that decided, nil where none did.
+func assertion(d *text.Doc, cues []cue, m rulebook.Match, kind string) (corpus.Assertion, *cue) {
+	found, by := corpus.Affirmed, (*cue)(nil)
+	for i, q := range cues {
 		a := corpus.Assertion(q.Sense)
 		if q.Sense != rulebook.End && weight[a] > weight[found] && reaches(d, cues, q, m) {
-			found = a
+			found, by = a, &cues[i]
 		}
 	}
 	if found == corpus.Possible && kind == "cause" {
-		return corpus.Affirmed
+		return corpus.Affirmed, nil
 	}
-	return found
+	return found, by
 }
 
 var weight = map[corpus.Assertion]int{

@@ -30,8 +30,9 @@ func (c *Classifier) example(r *rulebook.Rule, e rulebook.Example) string {
 	for n, s := range d.Sentences {
 		cues := c.cues(d, s)
 		c.book.FindRules(d, s, func(found *rulebook.Rule, m rulebook.Match) {
-			if found == r && c.holds(r, d, n) && !rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last) {
-				hits = append(hits, hit{Tag: corpus.Tag{Span: m.Shown, Assertion: assertion(d, cues, m, "")}})
+			if found == r && c.holds(r, d, n, m) {
+				a, _ := assertion(d, cues, m, "")
+				hits = append(hits, hit{Tag: corpus.Tag{Span: m.Shown, Assertion: a}})
 			}
 		})
 	}

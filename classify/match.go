@@ -33,6 +33,7 @@ type hit struct {
 	sentence int
 	match    rulebook.Match
 	rule     *rulebook.Rule
+	cue      *cue // what decided the assertion, nil where nothing did
 }
 
 // Tag finds the factors of an occurrence and its chain. Tags are in order of
@@ -61,7 +62,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 	for n, s := range d.Sentences {
 		from := len(hits)
 		c.book.FindRules(d, s, func(r *rulebook.Rule, m rulebook.Match) {
-			if reads(r, kind) && c.holds(r, d, n) && !rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last) {
+			if reads(r, kind) && c.holds(r, d, n, m) {
 				hits = append(hits, hit{
 					Tag: corpus.Tag{
 						Factor: r.Factor, Basis: basis(r), Span: m.Shown, Quote: m.Shown.Of(d.Text),
@@ -76,7 +77,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 		}
 		cues := c.cues(d, s)
 		for i := from; i < len(hits); i++ {
-			hits[i].Assertion = assertion(d, cues, hits[i].match, kind)
+			hits[i].Assertion, hits[i].cue = assertion(d, cues, hits[i].match, kind)
 		}
 		hits = append(hits[:from], distinct(hits[from:])...)
 	}
@@ -113,32 +114,36 @@ func (c *Classifier) inPlace(hits []hit) []hit {
 	})
 }
 
-// holds checks the conditions of a rule around sentence n.
-func (c *Classifier) holds(r *rulebook.Rule, d *text.Doc, n int) bool {
+// holds checks the conditions of a rule around a match in sentence n.
+func (c *Classifier) holds(r *rulebook.Rule, d *text.Doc, n int, m rulebook.Match) bool {
+	return c.refused(r, d, n, m) == ""
+}
+
+// refused says why the conditions of a rule do not hold, "" where they do.
+func (c *Classifier) refused(r *rulebook.Rule, d *text.Doc, n int, m rulebook.Match) string {
 	s := d.Sentences[n]
-	if len(r.Unless) > 0 && rulebook.Stands(r.Unless, d, s) {
-		return false
+	switch {
+	case len(r.PartOf) > 0 && rulebook.Overlaps(r.PartOf, d, s, m.First, m.Last):
+		return "the words are part of something that the rule excludes (not part of)"
+	case len(r.Unless) > 0 && rulebook.Stands(r.Unless, d, s):
+		return "words that the rule excludes stand in the same sentence (unless)"
+	case len(r.With) > 0 && !rulebook.Stands(r.With, d, s):
+		return "words that the rule wants in the same sentence are missing (with)"
+	case len(r.Near) > 0 && !c.near(r, d, n):
+		return "words that the rule wants in this or a neighbouring sentence are missing (near)"
+	case len(r.Nowhere) > 0 && slices.ContainsFunc(d.Sentences, func(s text.Sentence) bool { return rulebook.Stands(r.Nowhere, d, s) }):
+		return "words that the rule excludes stand in the narrative (nowhere)"
 	}
-	if len(r.With) > 0 && !rulebook.Stands(r.With, d, s) {
-		return false
-	}
-	if len(r.Near) > 0 {
-		near := false
-		for k := max(0, n-1); k <= min(n+1, len(d.Sentences)-1) && !near; k++ {
-			near = rulebook.Stands(r.Near, d, d.Sentences[k])
+	return ""
+}
+
+func (c *Classifier) near(r *rulebook.Rule, d *text.Doc, n int) bool {
+	for k := max(0, n-1); k <= min(n+1, len(d.Sentences)-1); k++ {
+		if rulebook.Stands(r.Near, d, d.Sentences[k]) {
+			return true
 		}
-		if !near {
-			return false
-		}
 	}
-	if len(r.Nowhere) > 0 {
-		for _, s := range d.Sentences {
-			if rulebook.Stands(r.Nowhere, d, s) {
-				return false
-			}
-		}
-	}
-	return true
+	return false
 }
 
 // distinct keeps, of overlapping hits of one factor, the strongest and of

@@ -17,7 +17,7 @@ func newRulesCommand(g *globalOptions) *cobra.Command {
 	folder := ""
 	cmd := &cobra.Command{
 		Use:   "rules",
-		Short: "The rule book: list, show and check it",
+		Short: "The rule book: list, show, check and explain it",
 		Args:  args(cobra.NoArgs),
 		RunE:  func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
 	}
@@ -41,7 +41,7 @@ func newRulesCommand(g *globalOptions) *cobra.Command {
 		Args:    args(cobra.NoArgs),
 		RunE:    func(cmd *cobra.Command, _ []string) error { return checkRules(cmd, folder) },
 	}
-	cmd.AddCommand(list, show, check)
+	cmd.AddCommand(list, show, check, newExplainCommand(&globalOptions{}))
 	return cmd
 }
 

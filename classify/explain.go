@@ -1,0 +1,63 @@
+package classify
+
+import (
+	"catena/classify/rulebook"
+	"catena/ingest/corpus"
+)
+
+// Reason tells why a tag was made, or why one was not.
+type Reason struct {
+	Rule        *rulebook.Rule
+	Narrative   int
+	corpus.Span             // the words that matched
+	Sentence    corpus.Span // the sentence that they stand in
+	Assertion   corpus.Assertion
+	Basis       corpus.Basis
+	Side        string
+	Cue         corpus.Span // the words that decided the assertion; empty where none did
+	Refused     string      // why no tag was made; "" where one was
+}
+
+// Explain goes through an occurrence as Tag does and tells, in order of place,
+// what each rule found and what it found but did not tag. With a factor it
+// tells of that factor and those below it only.
+func (c *Classifier) Explain(o *corpus.Occurrence, factor string) []Reason {
+	var out []Reason
+	for n, narrative := range o.Narratives {
+		d := c.book.Lexicon.Analyse(narrative.Text)
+		kept := map[string]bool{}
+		key := func(r *rulebook.Rule, s corpus.Span) string { return r.ID + s.Of(d.Text) + string(rune(s.Start)) }
+		for _, h := range c.narrative(d, narrative.Kind, twin(o)) {
+			if factor != "" && !c.book.Tree.Implies(h.Factor, factor) {
+				continue
+			}
+			kept[key(h.rule, h.Span)] = true
+			r := Reason{Rule: h.rule, Narrative: n, Span: h.Span, Sentence: d.Sentences[h.sentence].Span, Assertion: h.Assertion, Basis: h.Basis, Side: h.Side}
+			if h.cue != nil {
+				r.Cue = corpus.Span{Start: d.Tokens[h.cue.first].Start, End: d.Tokens[h.cue.last-1].End}
+			}
+			out = append(out, r)
+		}
+		for k, s := range d.Sentences {
+			c.book.FindRules(d, s, func(r *rulebook.Rule, m rulebook.Match) {
+				if factor != "" && !c.book.Tree.Implies(r.Factor, factor) || kept[key(r, m.Shown)] {
+					return
+				}
+				why := c.refused(r, d, k, m)
+				switch {
+				case why != "":
+				case !reads(r, narrative.Kind):
+					why = "the rule does not read this kind of narrative (only in)"
+				case r.DeadSide:
+					why = "it is not known to be on the side of an engine that failed before, or the factor is told"
+				case len(r.After) > 0:
+					why = "nothing that it could come after is affirmed before it (only after), or a stronger tag covers it"
+				default:
+					why = "a stronger or shorter tag of the factor covers it"
+				}
+				out = append(out, Reason{Rule: r, Narrative: n, Span: m.Shown, Sentence: s.Span, Refused: why})
+			})
+		}
+	}
+	return out
+}

@@ -1,0 +1,91 @@
+package main
+
+import (
+	"fmt"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"catena/classify"
+	"catena/ingest/store"
+)
+
+func newExplainCommand(g *globalOptions) *cobra.Command {
+	source := ""
+	cmd := &cobra.Command{
+		Use:   "explain ID [FACTOR]",
+		Short: "Why an occurrence has its tags, and why a factor is not among them",
+		Long: `Prints, for each tag of an occurrence, the sentence with the words that show
+the factor, the rule that found them and what it means, and the words that
+decided how they are spoken of. With a factor it also prints what rules found
+but did not tag, and why.`,
+		Example: "  catena rules explain T21-014 slow-airspeed",
+		Args:    args(cobra.RangeArgs(1, 2)),
+		RunE: func(cmd *cobra.Command, given []string) error {
+			if err := factors(cmd, given[1:]); err != nil {
+				return err
+			}
+			return runExplain(cmd, g, source, given)
+		},
+	}
+	g.addAt(cmd.Flags())
+	cmd.Flags().StringVar(&source, "source", "", "the source, where several use the same reference")
+	return cmd
+}
+
+func runExplain(cmd *cobra.Command, g *globalOptions, source string, given []string) error {
+	c, err := g.open(cmd)
+	if err != nil {
+		return err
+	}
+	defer c.Close()
+	keys, err := c.Store.Keys(cmd.Context(), source, given[0])
+	if err != nil {
+		return err
+	}
+	if len(keys) == 0 {
+		return hint(fmt.Errorf("no occurrence has the reference %q", given[0]), "catena find WORDS lists occurrences with their references")
+	}
+	factor := strings.Join(given[1:], "")
+	for _, key := range keys {
+		r, err := c.Store.One(cmd.Context(), key)
+		if err != nil {
+			return err
+		}
+		fmt.Fprintf(cmd.OutOrStdout(), "%s\nrule book %s\n", headline(r), c.Classifier.Version())
+		printReasons(cmd, r, c.Classifier.Explain(&r.Occurrence, factor), factor)
+	}
+	return nil
+}
+
+func printReasons(cmd *cobra.Command, r *store.Row, reasons []classify.Reason, factor string) {
+	out := cmd.OutOrStdout()
+	tags := 0
+	for _, x := range reasons {
+		if x.Refused != "" && factor == "" {
+			continue
+		}
+		text := r.Narratives[x.Narrative].Text
+		fmt.Fprintf(out, "\n%s", x.Rule.Factor)
+		if x.Refused == "" {
+			tags++
+			fmt.Fprintf(out, ", %s (%s)", x.Assertion, x.Basis)
+			if x.Side != "" {
+				fmt.Fprintf(out, ", %s", x.Side)
+			}
+		} else {
+			fmt.Fprint(out, ", not tagged")
+		}
+		fmt.Fprintf(out, "\n  %s [%s] %s\n", clean(strings.TrimSpace(text[x.Sentence.Start:x.Start])), clean(x.Of(text)), clean(strings.TrimSpace(text[x.End:x.Sentence.End])))
+		fmt.Fprintf(out, "  rule %s (%s:%d, strength %.2f): %s\n", x.Rule.ID, x.Rule.File, x.Rule.Line, x.Rule.Strength, x.Rule.Says)
+		switch {
+		case x.Refused != "":
+			fmt.Fprintf(out, "  %s\n", x.Refused)
+		case x.Cue.Len() > 0:
+			fmt.Fprintf(out, "  spoken of so because of %q\n", clean(x.Cue.Of(text)))
+		}
+	}
+	if tags == 0 && factor != "" {
+		fmt.Fprintf(out, "\nNo tag of %s: not mentioned in words that a rule knows, which is not a denial.\n", factor)
+	}
+}
