@@ -51,7 +51,9 @@ func assertion(d *text.Doc, cues []cue, m rulebook.Match, kind string) (corpus.A
 	found, by := corpus.Affirmed, (*cue)(nil)
 	for i, q := range cues {
 		a := corpus.Assertion(q.Sense)
-		if q.Sense != rulebook.End && weight[a] > weight[found] && reaches(d, cues, q, m) {
+		// of equal cues the longest is told as the reason
+		more := weight[a] > weight[found] || by != nil && a == found && q.last-q.first > by.last-by.first
+		if q.Sense != rulebook.End && more && reaches(d, cues, q, m) {
 			found, by = a, &cues[i]
 		}
 	}
