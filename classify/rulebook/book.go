@@ -587,7 +587,7 @@ func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match))
 func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 	for _, p := range patterns {
 		for i := s.First; i < s.Last; i++ {
-			if slices.Contains(p.first, d.Tokens[i].Word) {
+			if p.canStart(d.Tokens[i].Word) {
 				if _, ok := p.MatchAt(d, i, s.Last); ok {
 					return true
 				}
@@ -602,7 +602,7 @@ func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 func Overlaps(patterns []*Pattern, d *text.Doc, s text.Sentence, first, last int) bool {
 	for _, p := range patterns {
 		for i := s.First; i < last; i++ {
-			if slices.Contains(p.first, d.Tokens[i].Word) {
+			if p.canStart(d.Tokens[i].Word) {
 				if m, ok := p.MatchAt(d, i, s.Last); ok && m.Last > first {
 					return true
 				}

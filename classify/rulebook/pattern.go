@@ -27,6 +27,13 @@ type Pattern struct {
 	Source   string
 	variants [][]elem    // tried in turn; more than one where a group holds gaps
 	first    []text.Word // words that a match can begin with
+	starts   []uint64    // the same, a bit each
+}
+
+// canStart tells whether a match can begin with a word.
+func (p *Pattern) canStart(w text.Word) bool {
+	i := int(w >> 6)
+	return i < len(p.starts) && p.starts[i]&(1<<(w&63)) != 0
 }
 
 type elemKind uint8
@@ -243,6 +250,12 @@ func (c *compiler) pattern(source string) (*Pattern, error) {
 		if err := c.variant(p, items, seen); err != nil {
 			return nil, err
 		}
+	}
+	for _, w := range p.first {
+		for len(p.starts) <= int(w>>6) {
+			p.starts = append(p.starts, 0)
+		}
+		p.starts[w>>6] |= 1 << (w & 63)
 	}
 	return p, nil
 }
