@@ -576,6 +576,9 @@ func (b *Book) FindOnward(d *text.Doc, s text.Sentence, found func(Match)) {
 func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match)) {
 	for i := s.First; i < s.Last; i++ {
 		for _, e := range x[d.Tokens[i].Word] {
+			if !e.pattern.possible(d, s) {
+				continue
+			}
 			if m, ok := e.pattern.MatchAt(d, i, s.Last); ok {
 				found(e.owner, m)
 			}
@@ -586,6 +589,9 @@ func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match))
 // Stands tells whether one of the patterns matches anywhere in the sentence.
 func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 	for _, p := range patterns {
+		if !p.possible(d, s) {
+			continue
+		}
 		for i := s.First; i < s.Last; i++ {
 			if p.canStart(d.Tokens[i].Word) {
 				if _, ok := p.MatchAt(d, i, s.Last); ok {
@@ -601,6 +607,9 @@ func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 // some of the tokens first..last-1.
 func Overlaps(patterns []*Pattern, d *text.Doc, s text.Sentence, first, last int) bool {
 	for _, p := range patterns {
+		if !p.possible(d, s) {
+			continue
+		}
 		for i := s.First; i < last; i++ {
 			if p.canStart(d.Tokens[i].Word) {
 				if m, ok := p.MatchAt(d, i, s.Last); ok && m.Last > first {

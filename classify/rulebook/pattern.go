@@ -25,9 +25,46 @@ import (
 // A Pattern does not change after it is compiled and may be shared.
 type Pattern struct {
 	Source   string
-	variants [][]elem    // tried in turn; more than one where a group holds gaps
-	first    []text.Word // words that a match can begin with
-	starts   []uint64    // the same, a bit each
+	variants [][]elem      // tried in turn; more than one where a group holds gaps
+	first    []text.Word   // words that a match can begin with
+	starts   []uint64      // the same, a bit each
+	anchors  [][]text.Word // by variant: words of which one must stand in the sentence; nil for no such words
+}
+
+// possible tells cheaply whether the pattern can match in a sentence at all.
+// Many patterns begin with words that stand everywhere ("it", "not"); what
+// must follow them does not.
+func (p *Pattern) possible(d *text.Doc, s text.Sentence) bool {
+	for _, a := range p.anchors {
+		if a == nil || d.Has(s, a) {
+			return true
+		}
+	}
+	return false
+}
+
+// anchor picks, of the elements after the first that must stand there, the
+// one with the fewest words to begin with.
+func anchor(elems []elem) []text.Word {
+	var best []text.Word
+	first := true
+	for _, e := range elems {
+		if e.kind != phrases {
+			continue
+		}
+		if first {
+			first = false
+			continue
+		}
+		if e.optional || best != nil && len(e.trie.next) >= len(best) {
+			continue
+		}
+		best = make([]text.Word, 0, len(e.trie.next))
+		for w := range e.trie.next {
+			best = append(best, w)
+		}
+	}
+	return best
 }
 
 // canStart tells whether a match can begin with a word.
@@ -310,6 +347,7 @@ func (c *compiler) variant(p *Pattern, items []string, seen map[text.Word]bool) 
 		elems = append(elems, e)
 	}
 	p.variants = append(p.variants, elems)
+	p.anchors = append(p.anchors, anchor(elems))
 	open := true
 	for _, e := range elems {
 		if !open {

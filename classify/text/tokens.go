@@ -41,6 +41,9 @@ type Doc struct {
 	Tokens    []Token
 	Sentences []Sentence
 
+	words   []uint64 // the words of one sentence, a bit each
+	wordsOf int      // the first token of that sentence, plus one
+
 	tags   []Tag  // per token, filled by sentence on demand
 	tagged []bool // per sentence
 }
@@ -332,6 +335,27 @@ func (d *Doc) sentences() {
 			s.End++
 		}
 	}
+}
+
+// Has tells whether one of the words stands in the sentence. The answer for a
+// sentence is prepared once; a Doc is for one goroutine at a time.
+func (d *Doc) Has(s Sentence, words []Word) bool {
+	if d.wordsOf != s.First+1 {
+		clear(d.words)
+		d.wordsOf = s.First + 1
+		for _, t := range d.Tokens[s.First:s.Last] {
+			for int(t.Word>>6) >= len(d.words) {
+				d.words = append(d.words, 0)
+			}
+			d.words[t.Word>>6] |= 1 << (t.Word & 63)
+		}
+	}
+	for _, w := range words {
+		if i := int(w >> 6); i < len(d.words) && d.words[i]&(1<<(w&63)) != 0 {
+			return true
+		}
+	}
+	return false
 }
 
 // Sentence finds the sentence that holds token i.
