@@ -11,6 +11,7 @@ import (
 	"catena/ingest/corpus"
 	"catena/ingest/store"
 	"catena/queries"
+	"catena/queries/table"
 )
 
 func newCaseCommand(g *globalOptions) *cobra.Command {
@@ -99,7 +100,7 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 		fmt.Fprintf(out, "  %s, %s\n     %s\n", t.Factor, t.Assertion, strings.TrimSpace(sentence(t)))
 	}
 	for n, t := range r.Narratives {
-		fmt.Fprintf(out, "\nNarrative %d (%s):\n%s\n", n+1, clean(t.Kind), wrap(clean(t.Text), width(out)))
+		fmt.Fprintf(out, "\nNarrative %d (%s):\n%s\n", n+1, clean(t.Kind), table.Wrap(clean(t.Text), width(out), ""))
 	}
 	fmt.Fprintf(out, "\nThis is what the report tells, not a finding of cause. The investigating authority,\nthe aircraft flight manual, local regulations and licensed instructors come first.\n")
 }
@@ -114,25 +115,4 @@ func sideWords(t corpus.Tag) string {
 func kindOf(factor string) catalogue.Kind {
 	f, _ := catalogue.Builtin().Factor(factor)
 	return f.Kind
-}
-
-// wrap breaks a text at spaces.
-func wrap(s string, width int) string {
-	var b strings.Builder
-	col := 0
-	for _, w := range strings.Fields(s) {
-		n := len([]rune(w))
-		switch {
-		case col == 0:
-		case col+1+n > width:
-			b.WriteByte('\n')
-			col = 0
-		default:
-			b.WriteByte(' ')
-			col++
-		}
-		b.WriteString(w)
-		col += n
-	}
-	return b.String()
 }

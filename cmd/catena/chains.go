@@ -18,11 +18,7 @@ func newChainsCommand(g *globalOptions) *cobra.Command {
 			if most < 1 {
 				return usage(cmd, "--most: want a number above 0")
 			}
-			scope, err := g.scope(cmd)
-			if err != nil {
-				return err
-			}
-			c, err := g.open(cmd)
+			c, scope, err := g.openScoped(cmd)
 			if err != nil {
 				return err
 			}

@@ -57,11 +57,7 @@ func runFind(cmd *cobra.Command, g *globalOptions, o *findOptions, query string)
 	case o.most < 1 || o.offset < 0:
 		return usage(cmd, "--most wants a number above 0, --skip one that is not below")
 	}
-	scope, err := g.scope(cmd)
-	if err != nil {
-		return err
-	}
-	c, err := g.open(cmd)
+	c, scope, err := g.openScoped(cmd)
 	if err != nil {
 		return err
 	}

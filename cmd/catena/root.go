@@ -159,6 +159,16 @@ func (g *globalOptions) scope(cmd *cobra.Command) (queries.Scope, error) {
 	return s, nil
 }
 
+// openScoped opens the collection for a question within --only, --from and --to.
+func (g *globalOptions) openScoped(cmd *cobra.Command) (*collection.Collection, queries.Scope, error) {
+	scope, err := g.scope(cmd)
+	if err != nil {
+		return nil, scope, err
+	}
+	c, err := g.open(cmd)
+	return c, scope, err
+}
+
 // factors checks that the arguments are factors of the catalogue.
 func factors(cmd *cobra.Command, ids []string) error {
 	tree := catalogue.Builtin()

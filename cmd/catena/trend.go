@@ -56,11 +56,7 @@ func runTrend(cmd *cobra.Command, g *globalOptions, o *trendOptions, ids []strin
 	case !(o.scale > 0):
 		return usage(cmd, "--scale: want a number above 0")
 	}
-	scope, err := g.scope(cmd)
-	if err != nil {
-		return err
-	}
-	c, err := g.open(cmd)
+	c, scope, err := g.openScoped(cmd)
 	if err != nil {
 		return err
 	}

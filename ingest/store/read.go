@@ -28,30 +28,46 @@ type querier interface {
 	QueryRowContext(ctx context.Context, query string, args ...any) *sql.Row
 }
 
-const rowQuery = `SELECT o.key, o.change, o.source, o.id, o.date, o.place, o.country, o.make, o.model, o.category, o.engines, o.engine_type,
-	o.operation, o.phase, o.injury, o.damage, o.event, o.rest, o.rulebook, f.path, o.row, o.line
+// fieldColumns are the columns of an occurrence's fields, in the order in
+// which fields scans them.
+const fieldColumns = `o.source, o.id, o.date, o.place, o.country, o.make, o.model, o.category, o.engines, o.engine_type,
+	o.operation, o.phase, o.injury, o.damage, o.event, o.rest`
+
+// fields scans fieldColumns into an occurrence; call done after the scan.
+type fields struct {
+	o          *corpus.Occurrence
+	date, rest string
+}
+
+func (f *fields) into() []any {
+	o := f.o
+	return []any{&o.Source, &o.ID, &f.date, &o.Place, &o.Country, &o.Make, &o.Model, &o.Category, &o.Engines, &o.EngineType,
+		&o.Operation, &o.Phase, &o.Injury, &o.Damage, &o.Event, &f.rest}
+}
+
+func (f *fields) done() error {
+	var err error
+	if f.o.Date, err = corpus.ParseDate(f.date); err != nil || f.rest == "{}" {
+		return err
+	}
+	var x rest
+	if err := json.Unmarshal([]byte(f.rest), &x); err != nil {
+		return err
+	}
+	f.o.Further, f.o.Codes, f.o.Extra = x.Aircraft, x.Codes, x.Extra
+	return nil
+}
+
+const rowQuery = `SELECT o.key, o.change, o.rulebook, f.path, o.row, o.line, ` + fieldColumns + `
 	FROM occurrence o JOIN file f ON f.key = o.file `
 
 func scanRow(rows *sql.Rows) (*Row, error) {
 	r := &Row{}
-	o := &r.Occurrence
-	var date, more string
-	if err := rows.Scan(&r.Key, &r.Change, &o.Source, &o.ID, &date, &o.Place, &o.Country, &o.Make, &o.Model, &o.Category, &o.Engines, &o.EngineType,
-		&o.Operation, &o.Phase, &o.Injury, &o.Damage, &o.Event, &more, &r.Rulebook, &r.File, &r.Row, &r.Line); err != nil {
+	f := fields{o: &r.Occurrence}
+	if err := rows.Scan(append([]any{&r.Key, &r.Change, &r.Rulebook, &r.File, &r.Row, &r.Line}, f.into()...)...); err != nil {
 		return nil, err
 	}
-	var err error
-	if o.Date, err = corpus.ParseDate(date); err != nil {
-		return nil, err
-	}
-	if more != "{}" {
-		var x rest
-		if err := json.Unmarshal([]byte(more), &x); err != nil {
-			return nil, err
-		}
-		o.Further, o.Codes, o.Extra = x.Aircraft, x.Codes, x.Extra
-	}
-	return r, nil
+	return r, f.done()
 }
 
 // Select says which occurrences Each reads. The zero value means all.
@@ -305,10 +321,8 @@ type Counted struct {
 // Count streams what tables count, in the order of storing.
 func (s *Store) Count(ctx context.Context) iter.Seq2[*Counted, error] {
 	return func(yield func(*Counted, error) bool) {
-		rows, err := s.db.QueryContext(ctx, `SELECT o.key, o.source, o.id, o.date, o.place, o.country, o.make, o.model, o.category, o.engines,
-			o.engine_type, o.operation, o.phase, o.injury, o.damage, o.event, o.rest, o.kinds, o.usable,
-			coalesce((SELECT group_concat(DISTINCT basis || ' ' || factor) FROM tag WHERE occurrence = o.key AND assertion = 'affirmed'), ''),
-			coalesce(c.links, '[]'), coalesce(c.broken_by, '')
+		rows, err := s.db.QueryContext(ctx, `SELECT o.key, o.kinds, o.usable, coalesce((SELECT group_concat(DISTINCT basis || ' ' || factor) FROM tag WHERE occurrence = o.key AND assertion = 'affirmed'), ''),
+			coalesce(c.links, '[]'), coalesce(c.broken_by, ''), `+fieldColumns+`
 			FROM occurrence o LEFT JOIN chain c ON c.occurrence = o.key ORDER BY o.key`)
 		if err != nil {
 			yield(nil, fmt.Errorf("count occurrences: %w", explain(err)))
@@ -334,21 +348,13 @@ func (s *Store) Count(ctx context.Context) iter.Seq2[*Counted, error] {
 func scanCounted(rows *sql.Rows) (*Counted, error) {
 	c := &Counted{}
 	o := &c.Occurrence
-	var date, more, kinds, factors, links string
-	if err := rows.Scan(&c.Key, &o.Source, &o.ID, &date, &o.Place, &o.Country, &o.Make, &o.Model, &o.Category, &o.Engines, &o.EngineType,
-		&o.Operation, &o.Phase, &o.Injury, &o.Damage, &o.Event, &more, &kinds, &c.Usable, &factors, &links, &c.BrokenBy); err != nil {
+	f := fields{o: o}
+	var kinds, factors, links string
+	if err := rows.Scan(append([]any{&c.Key, &kinds, &c.Usable, &factors, &links, &c.BrokenBy}, f.into()...)...); err != nil {
 		return nil, err
 	}
-	var err error
-	if o.Date, err = corpus.ParseDate(date); err != nil {
+	if err := f.done(); err != nil {
 		return nil, err
-	}
-	if more != "{}" {
-		var x rest
-		if err := json.Unmarshal([]byte(more), &x); err != nil {
-			return nil, err
-		}
-		o.Further, o.Codes, o.Extra = x.Aircraft, x.Codes, x.Extra
 	}
 	if kinds != "" {
 		for _, k := range strings.Split(kinds, ",") {

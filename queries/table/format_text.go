@@ -44,7 +44,7 @@ func writeText(w io.Writer, t *Table, o Options) error {
 	}
 	var b strings.Builder
 	if t.Title != "" {
-		fmt.Fprintf(&b, "%s\n\n", wrap(Clean(t.Title), o.Width, ""))
+		fmt.Fprintf(&b, "%s\n\n", Wrap(Clean(t.Title), o.Width, ""))
 	}
 	for _, line := range strings.Split(p.Render(), "\n") {
 		b.WriteString(strings.TrimRight(line, " ") + "\n")
@@ -53,10 +53,10 @@ func writeText(w io.Writer, t *Table, o Options) error {
 		b.WriteString("\n")
 	}
 	for _, x := range t.Tests {
-		b.WriteString(wrap(testText(x), o.Width, "  ") + "\n")
+		b.WriteString(Wrap(testText(x), o.Width, "  ") + "\n")
 	}
 	for _, n := range t.Notes {
-		b.WriteString("* " + wrap(Clean(n), o.Width-2, "  ") + "\n")
+		b.WriteString("* " + Wrap(Clean(n), o.Width-2, "  ") + "\n")
 	}
 	_, err := io.WriteString(w, b.String())
 	return err
@@ -89,8 +89,8 @@ func columnWidths(s shown, width int) []int {
 	return widths
 }
 
-// wrap breaks text at spaces; lines after the first begin with indent.
-func wrap(s string, width int, indent string) string {
+// Wrap breaks text at spaces; lines after the first begin with indent.
+func Wrap(s string, width int, indent string) string {
 	var b strings.Builder
 	col := 0
 	for _, word := range strings.Fields(s) {
