@@ -130,6 +130,57 @@ func TestSides(t *testing.T) {
 	}
 }
 
+// Speeds are compared only airborne, with thrust asymmetric, in one unit.
+func TestBelowByNumbers(t *testing.T) {
+	for text, want := range map[string]float64{
+		"The left engine quit. Vmc is 84 knots. The airspeed fell to 71 knots and the nose swung.":             71,
+		"The left engine quit. The published Vmca was 84 kt. The speed was 90 knots.":                          0,
+		"Vmc is 84 knots. The airspeed was 71 knots. Then the left engine quit.":                               0,
+		"The left engine quit on the take-off roll at 71 knots. Vmc is 84 knots.":                              0,
+		"The left engine quit. Vmc is 84 knots. The airspeed fell to 71 mph.":                                  0,
+		"The left engine quit. Vmc is 84 knots. At no time did the speed fall to 71 knots.":                    0,
+		"The left engine quit. Vmc is 84 knots, or Vmc is 88 knots by the newer book. The speed was 80 knots.": 0,
+	} {
+		got := 0.0
+		for _, tag := range tagged(t, corpus.Narrative{Text: text}).Tags {
+			if q := tag.Quantity; tag.Factor == "below-vmc" && tag.Basis == corpus.Inferred && q.Limit == 84 && q.LimitKind == "vmc" {
+				got = q.Value
+			}
+		}
+		if got != want {
+			t.Errorf("%q: %v, want %v", text, got, want)
+		}
+	}
+	single := corpus.Occurrence{Aircraft: corpus.Aircraft{Engines: 1}, Narratives: []corpus.Narrative{{Text: "The left engine quit. Vmc is 84 knots. The airspeed fell to 71 knots."}}}
+	for _, tag := range classifier(t).Tag(&single).Tags {
+		if tag.Basis == corpus.Inferred {
+			t.Errorf("a single has no dead side: %+v", tag)
+		}
+	}
+}
+
+// Common practice, no source: a failed left engine yaws and rolls the aircraft
+// left; rudder on the live side is right, on the dead side wrong.
+func TestDeadSide(t *testing.T) {
+	for text, want := range map[string]string{
+		"The left engine quit. The aircraft yawed left. The student pressed the left pedal.":    "roll-toward-dead-engine wrong-rudder",
+		"The left engine quit. The aircraft rolled right. The student pressed the right pedal.": "",
+		"The No. 2 engine failed. The right wing dropped.":                                      "roll-toward-dead-engine",
+		"Both engines quit, first the left engine, and the right engine failed. It yawed left.": "",
+		"The left engine failed in reverse. The aircraft yawed left.":                           "",
+	} {
+		var got []string
+		for _, tag := range tagged(t, corpus.Narrative{Text: text}).Tags {
+			if tag.Basis == corpus.Inferred {
+				got = append(got, tag.Factor)
+			}
+		}
+		if strings.Join(got, " ") != want {
+			t.Errorf("%q: %v, want %s", text, got, want)
+		}
+	}
+}
+
 func TestNothingFoundIsEmptyNotNull(t *testing.T) {
 	got := tagged(t)
 	if got.Tags == nil || got.Chain.Links == nil || got.Rulebook == "" {

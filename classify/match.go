@@ -82,7 +82,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 		hits = append(hits[:from], distinct(hits[from:])...)
 	}
 	inherit(c.book.Lexicon, d, hits)
-	return c.inPlace(onDeadSide(c.book, d, hits, twin))
+	return c.inPlace(c.belowByNumbers(d, onDeadSide(c.book, d, hits, twin), kind, twin))
 }
 
 // reads tells whether a rule reads narratives of a kind.

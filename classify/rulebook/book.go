@@ -34,6 +34,8 @@ type Book struct {
 	Always   []Before   // what comes first in time, however it is told
 	Usually  []Before   // what comes first where an event is summed up
 
+	MinimumIs   []*Pattern // a minimum control speed is told; what is shown is the number
+	SpeedFlown  []*Pattern // a speed flown is told; what is shown is the number
 	LandingRoll []*Pattern // words of a landing roll, where an engine has no dead side
 
 	rules  index[*Rule]
@@ -163,6 +165,8 @@ type fileYAML struct {
 	Always   []located            `yaml:"always"`
 	Usually  []located            `yaml:"in summaries"`
 	Landing  []located            `yaml:"landing roll"`
+	Minimum  []located            `yaml:"minimum control speed is"`
+	Speed    []located            `yaml:"speed flown is"`
 }
 
 type ruleYAML struct {
@@ -350,6 +354,8 @@ func (l *loader) compile() {
 		b.Explains = append(b.Explains, l.patterns(c, l.names[i], f.Explains)...)
 		b.Always = append(b.Always, l.befores(l.names[i], f.Always)...)
 		b.Usually = append(b.Usually, l.befores(l.names[i], f.Usually)...)
+		b.MinimumIs = append(b.MinimumIs, l.patterns(c, l.names[i], f.Minimum)...)
+		b.SpeedFlown = append(b.SpeedFlown, l.patterns(c, l.names[i], f.Speed)...)
 		b.LandingRoll = append(b.LandingRoll, l.patterns(c, l.names[i], f.Landing)...)
 	}
 	// terms that no rule uses are compiled all the same, so that their faults show
@@ -621,6 +627,23 @@ func Overlaps(patterns []*Pattern, d *text.Doc, s text.Sentence, first, last int
 	return false
 }
 
+// Each calls found for every place in the sentence where one of the patterns
+// matches.
+func Each(patterns []*Pattern, d *text.Doc, s text.Sentence, found func(Match)) {
+	for _, p := range patterns {
+		if !p.possible(d, s) {
+			continue
+		}
+		for i := s.First; i < s.Last; i++ {
+			if p.canStart(d.Tokens[i].Word) {
+				if m, ok := p.MatchAt(d, i, s.Last); ok {
+					found(m)
+				}
+			}
+		}
+	}
+}
+
 // UnusedTerms lists the terms that no rule, cue or other term uses.
 func (b *Book) UnusedTerms() []string {
 	used := map[string]bool{}
@@ -648,5 +671,5 @@ func (b *Book) mentions(name string) bool {
 			return true
 		}
 	}
-	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
+	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || has(b.MinimumIs) || has(b.SpeedFlown) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
 }

@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"io"
 	"strings"
 
 	"github.com/spf13/cobra"
@@ -86,6 +87,7 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 		t := r.Tags[l.Tag]
 		fmt.Fprintf(out, "  %d. %s%s\n     %s\n     (%s, rule %s, strength %.2f)\n", i+1, l.Factor, sideWords(t), strings.TrimSpace(sentence(t)), kindOf(l.Factor), t.Rule, t.Strength)
 	}
+	printBalance(out, r)
 	if r.Chain.BrokenBy != "" {
 		fmt.Fprintf(out, "  broken by: %s\n", r.Chain.BrokenBy)
 	}
@@ -103,6 +105,22 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 		fmt.Fprintf(out, "\nNarrative %d (%s):\n%s\n", n+1, clean(t.Kind), table.Wrap(clean(t.Text), width(out), ""))
 	}
 	fmt.Fprintf(out, "\nThis is what the report tells, not a finding of cause. The investigating authority,\nthe aircraft flight manual, local regulations and licensed instructors come first.\n")
+}
+
+// printBalance tells, where a speed flown and a minimum control speed are both
+// told, the share of the needed yawing moment that full rudder could still
+// give: the square of their ratio (common practice, no source). It is shown
+// below 1 only.
+func printBalance(out io.Writer, r *store.Row) {
+	for _, t := range r.Tags {
+		q := t.Quantity
+		if q == nil || q.LimitKind != "vmc" || q.Limit <= 0 || q.Value >= q.Limit {
+			continue
+		}
+		ratio := q.Value / q.Limit
+		fmt.Fprintf(out, "  %.0f %s flown against a minimum control speed of %.0f: balance ratio %.2f, the share of the yawing moment that\n"+
+			"  full rudder could still give. A published speed holds for the conditions of its certification only.\n", q.Value, q.Unit, q.Limit, ratio*ratio)
+	}
 }
 
 func sideWords(t corpus.Tag) string {
