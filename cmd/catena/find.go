@@ -72,7 +72,7 @@ func runFind(cmd *cobra.Command, g *globalOptions, o *findOptions, query string)
 	}
 	x, err := c.Index(cmd.Context())
 	if err != nil {
-		return err
+		return explainOpen(err)
 	}
 	result, err := x.Search(cmd.Context(), q, c.Narratives(cmd.Context()))
 	if err != nil {

@@ -17,6 +17,7 @@ import (
 	"catena/classify"
 	"catena/classify/catalogue"
 	"catena/classify/rulebook"
+	"catena/index"
 	"catena/ingest/collection"
 	"catena/ingest/corpus"
 	"catena/ingest/store"
@@ -133,6 +134,8 @@ func explainOpen(err error) error {
 	switch {
 	case errors.Is(err, store.ErrMissing):
 		return hint(err, "load something first: catena load FILE; or name the folder with --at")
+	case errors.Is(err, index.ErrBusy):
+		return hint(err, "a load is running; tables and cases can be read meanwhile, searching when it is done")
 	case errors.Is(err, collection.ErrHeld):
 		return hint(err, "try again when it is done, or wait longer with --wait")
 	}
