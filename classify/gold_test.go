@@ -31,7 +31,7 @@ var goldSets = []struct {
 	name  string
 	files []string
 }{
-	{"written", []string{"cmd/catena/demo/written-a", "cmd/catena/demo/written-b"}},
+	{"written", []string{"cmd/catena/demo/written-a", "cmd/catena/demo/written-b", "cmd/catena/demo/written-c"}},
 	{"made", []string{"cmd/catena/demo/made"}},
 }
 

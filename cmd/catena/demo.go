@@ -24,7 +24,7 @@ import (
 // operator, written by hand (written-*) and made by the fabricate command
 // (made), with their hours. The truth beside each file is for the tests.
 //
-//go:embed demo/made.ndjson demo/written-a.ndjson demo/written-b.ndjson demo/exposure.csv
+//go:embed demo/made.ndjson demo/written-a.ndjson demo/written-b.ndjson demo/written-c.ndjson demo/exposure.csv
 var demoFiles embed.FS
 
 // headline are the factors that the demo counts.
