@@ -8,7 +8,10 @@
 //	assertion.go  affirmed, denied, possible, advised or elsewhere, from the
 //	              cues around a match
 //	side.go       left or right, from the words around a match
+//	infer.go      what the side of a dead engine implies
+//	quantity.go   what a speed and a minimum control speed imply
 //	chain.go      the order of the affirmed tags
+//	explain.go    why a tag was made, and why one was not
 //	examples.go   the examples of the rule book itself
 //
 // All of it is pure: an occurrence goes in, tags and a chain come out, the

@@ -9,7 +9,10 @@
 //	rules:   what each looks for, with examples that must and must not match
 //	cues:    words that tell how a factor is spoken of: denied, possible,
 //	         advised, elsewhere; words that end their reach
-//	order:   words that turn the order of telling round (due to, after, ...)
+//	order, onward, explains, always, in summaries:
+//	         what tells the order of time (due to, which led to, ...)
+//	landing roll, minimum control speed is, speed flown is:
+//	         what the inference from sides and from speeds looks for
 //
 // What a rule looks for is a pattern; see Pattern for how one is written.
 //

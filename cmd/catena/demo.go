@@ -27,7 +27,7 @@ import (
 //go:embed demo/made.ndjson demo/written-a.ndjson demo/written-b.ndjson demo/written-c.ndjson demo/exposure.csv
 var demoFiles embed.FS
 
-// headline are the factors that the demo counts.
+// headline4 are the factors that the demo counts.
 var headline4 = []string{"wrong-rudder", "checklist-skipped", "power-rollback", "slow-airspeed"}
 
 func newDemoCommand(g *globalOptions) *cobra.Command {
