@@ -9,8 +9,9 @@
 // function panics on any input.
 //
 // Every level is a two-sided confidence level such as 0.95. Limits are found
-// to about 1e-12 of their value, by solving for them on the distribution
-// function (solve.go says why the ready-made quantiles are not used).
+// to about 1e-12 of their value for counts up to a million, by solving for them
+// on the distribution function (solve.go says why the ready-made quantiles are
+// not used).
 //
 // Floor 2 (tools).
 package stats

@@ -12,12 +12,14 @@ import (
 // distribution; step is a first step in log x towards the answer, about one
 // standard deviation, its sign the way in which the probability falls to p.
 //
-// The ready-made quantiles of gonum are not used: those of the beta
-// distribution stop at about 1e-6 of the value, and neither they nor those of
-// the gamma distribution say when they did not converge. The distribution
+// The ready-made quantiles of gonum (v0.17) are not used: those of the beta
+// distribution agree only to about 1e-11, and in a corner (shape 1e6 and 1, tail
+// 5e-7) one is wrong by a seventh without saying so. The distribution
 // functions themselves are right to about 1e-13, so the limits are solved for
 // there: bracket, then Newton on log p against log x, falling back to halving
-// whenever Newton would leave the bracket.
+// whenever Newton would leave the bracket. Against sums of 40 digits the limits
+// were right to 1e-12 for counts up to a million; beyond, the incomplete beta
+// function loses digits (the odds of 1e8 against 0 are wrong by 6e-8).
 func solve(from, step, p float64, tail func(x float64) (value, slope float64)) float64 {
 	above := math.Log(from) // the tail is larger than p here
 	below := above + step   // and smaller here
@@ -84,9 +86,16 @@ func oddsBelow(k, m int, tail float64) float64 {
 
 // betaBelow is the distribution function of Beta(a, b) at the probability
 // that has these log odds.
+//
+// Of a probability near 1 the complement keeps more digits; but one minus the
+// complement's tail is empty of digits where the result is small, as it is for
+// a small p-value. Above smallTail at most four of sixteen digits are lost.
 func betaBelow(a, b, logOdds float64) float64 {
+	const smallTail = 1e-4
 	if logOdds > 0 {
-		return 1 - mathext.RegIncBeta(b, a, 1/(1+math.Exp(logOdds)))
+		if v := 1 - mathext.RegIncBeta(b, a, 1/(1+math.Exp(logOdds))); v > smallTail {
+			return v
+		}
 	}
 	return mathext.RegIncBeta(a, b, 1/(1+math.Exp(-logOdds)))
 }
