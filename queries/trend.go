@@ -247,6 +247,9 @@ func (t *trend) notes(keys, factors []string, d *denominators) []string {
 		notes = append(notes, fmt.Sprintf("share: occurrences whose narratives affirm the factor, of the %d of %d with a usable narrative; what is not mentioned is not said not to have happened",
 			t.usable, t.total))
 	}
+	if t.Only != nil {
+		notes = append(notes, "only those where "+filter.Explain(t.Only))
+	}
 	notes = append(notes, fmt.Sprintf("ranges are %g%% intervals: Wilson for shares, exact Poisson (Garwood) for rates", t.Level*100))
 	notes = append(notes, d.notes...)
 	smalls := 0

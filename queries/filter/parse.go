@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
 	"unicode/utf8"
 
 	"catena/ingest/corpus"
@@ -25,12 +26,24 @@ type Error struct {
 }
 
 func (e *Error) Error() string {
-	s := fmt.Sprintf("%s\n  %s\n  %s%s", e.Text, e.Filter,
+	s := fmt.Sprintf("%s\n  %s\n  %s%s", e.Text, strings.Map(harmless, e.Filter),
 		strings.Repeat(" ", utf8.RuneCountInString(e.Filter[:e.Start])), strings.Repeat("^", max(1, utf8.RuneCountInString(e.Filter[e.Start:e.End]))))
 	if e.Try != "" {
 		s += "\n  " + e.Try
 	}
 	return s
+}
+
+// harmless puts one letter in the place of every one that could drive a
+// terminal or shift the underline.
+func harmless(r rune) rune {
+	switch {
+	case r == '\t':
+		return ' '
+	case unicode.IsControl(r), unicode.Is(unicode.Bidi_Control, r):
+		return utf8.RuneError
+	}
+	return r
 }
 
 // Bounds of the language, so that hostile input stays cheap.
@@ -45,8 +58,8 @@ var keywords = []string{"and", "or", "not"}
 func Parse(text string, v Vocabulary) (Node, error) {
 	p := &parser{text: text, vocabulary: v}
 	if len(text) > maxLength {
-		p.text = text[:40]
-		return nil, p.fault(0, 0, fmt.Sprintf("longer than %d bytes", maxLength), "")
+		p.text = strings.ToValidUTF8(text[:40], "")
+		return nil, p.fault(0, len(p.text), fmt.Sprintf("longer than %d bytes", maxLength), "")
 	}
 	if !utf8.ValidString(text) || strings.ContainsAny(text, "\n\r\x00") {
 		p.text = strings.ToValidUTF8(strings.NewReplacer("\n", " ", "\r", " ", "\x00", " ").Replace(text), "?")
@@ -64,6 +77,10 @@ func Parse(text string, v Vocabulary) (Node, error) {
 	}
 	if p.kind != end {
 		return nil, p.fault(p.start, p.stop, fmt.Sprintf("%q cannot stand here", p.word), "join conditions with and, or")
+	}
+	// What is read must be readable once printed, blanks and all.
+	if len(n.String()) > maxLength {
+		return nil, p.fault(0, len(text), fmt.Sprintf("longer than %d bytes when written out", maxLength), "")
 	}
 	return n, nil
 }
@@ -254,21 +271,39 @@ func (p *parser) factor(name string, start, stop int) (Node, error) {
 	return nil, p.fault(start, stop, fmt.Sprintf("no factor is called %q", id), didYouMean(id, p.vocabulary.Factors, "fields want a comparison, such as place = Tarnwick"))
 }
 
-// checkValue refuses values that could never compare.
+// checkValue refuses values that could never compare, and those that would
+// compare as something else than the field's name says.
 func (p *parser) checkValue(c *Compare) error {
-	switch c.Field {
-	case "date", "year", "month":
-		if _, err := corpus.ParseDate(c.Value); c.Op != "~" && (err != nil || c.Value == "") {
-			return p.fault(p.start, p.stop, fmt.Sprintf("%q is no date", c.Value), "write 2019, 2019-03 or 2019-03-31")
-		}
-	case "engines":
+	order := strings.ContainsAny(c.Op, "<>")
+	switch {
+	case c.Field == "date" || c.Field == "year" || c.Field == "month":
+		return p.checkDate(c)
+	case c.Field == "engines":
 		if _, err := strconv.Atoi(c.Value); err != nil {
 			return p.fault(p.start, p.stop, fmt.Sprintf("%q is no number", c.Value), "")
 		}
-	default:
-		if strings.ContainsAny(c.Op, "<>") && !strings.HasPrefix(c.Field, "extra.") {
-			return p.fault(p.start, p.stop, fmt.Sprintf("%s has no order, so %s cannot compare it", c.Field, c.Op), "= != and ~ can")
+	case strings.HasPrefix(c.Field, "extra."):
+		if _, ok := number(c.Value); order && !ok {
+			return p.fault(p.start, p.stop, fmt.Sprintf("%q is no number", c.Value), "other values of "+c.Field+" have no order: = != and ~ can compare them")
 		}
+	case order:
+		return p.fault(p.start, p.stop, fmt.Sprintf("%s has no order, so %s cannot compare it", c.Field, c.Op), "= != and ~ can")
+	}
+	return nil
+}
+
+func (p *parser) checkDate(c *Compare) error {
+	if c.Op == "~" {
+		return nil
+	}
+	d, err := corpus.ParseDate(c.Value)
+	switch {
+	case err != nil || c.Value == "":
+		return p.fault(p.start, p.stop, fmt.Sprintf("%q is no date", c.Value), "write 2019, 2019-03 or 2019-03-31")
+	case c.Field == "year" && d.Precision() > corpus.ToYear:
+		return p.fault(p.start, p.stop, fmt.Sprintf("%q is finer than a year", c.Value), fmt.Sprintf("write date %s %s", c.Op, c.Value))
+	case c.Field == "month" && d.Precision() > corpus.ToMonth:
+		return p.fault(p.start, p.stop, fmt.Sprintf("%q is finer than a month", c.Value), fmt.Sprintf("write date %s %s", c.Op, c.Value))
 	}
 	return nil
 }

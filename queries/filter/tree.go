@@ -2,6 +2,7 @@ package filter
 
 import (
 	"fmt"
+	"math"
 	"slices"
 	"strconv"
 	"strings"
@@ -59,25 +60,31 @@ func (n *Compare) eval(o *corpus.Occurrence, _ func(string) bool) bool {
 	if have == "" {
 		return false // not known is no match
 	}
-	switch n.Op {
-	case "~":
+	switch {
+	case n.Op == "~":
 		return strings.Contains(strings.ToLower(have), strings.ToLower(n.Value))
-	case "=":
+	case n.Op == "=" && n.Field != "engines":
 		return strings.EqualFold(have, n.Value)
-	case "!=":
+	case n.Op == "!=" && n.Field != "engines":
 		return !strings.EqualFold(have, n.Value)
 	}
-	a, errA := strconv.ParseFloat(have, 64)
-	b, errB := strconv.ParseFloat(n.Value, 64)
-	if errA != nil || errB != nil {
-		return false
-	}
-	return ordered(n.Op, compareFloat(a, b))
+	a, okA := number(have)
+	b, okB := number(n.Value)
+	return okA && okB && holds(n.Op, a, b)
+}
+
+// number reads a number; the words that strconv takes for one too (NaN, Inf)
+// are none.
+func number(s string) (float64, bool) {
+	v, err := strconv.ParseFloat(s, 64)
+	return v, err == nil && !math.IsNaN(v) && !math.IsInf(v, 0)
 }
 
 // evalDate compares what the date can mean with what the value can mean: =
 // holds where every day of the one lies in the other, < where every day lies
-// before it, and so on. A year is not known to lie in one of its months.
+// before it, and so on. A year is not known to lie in one of its months: of
+// date = 2015-03 and date != 2015-03 neither holds for an occurrence of which
+// only 2015 is known.
 func (n *Compare) evalDate(d corpus.Date) bool {
 	first, last := d.Bounds()
 	v, err := corpus.ParseDate(n.Value)
@@ -102,26 +109,21 @@ func (n *Compare) evalDate(d corpus.Date) bool {
 	return strings.Contains(d.String(), n.Value)
 }
 
-func compareFloat(a, b float64) int {
-	switch {
-	case a < b:
-		return -1
-	case a > b:
-		return 1
-	}
-	return 0
-}
-
-func ordered(op string, c int) bool {
+// holds compares two numbers.
+func holds(op string, a, b float64) bool {
 	switch op {
+	case "=":
+		return a == b
+	case "!=":
+		return a != b
 	case "<":
-		return c < 0
+		return a < b
 	case "<=":
-		return c <= 0
+		return a <= b
 	case ">":
-		return c > 0
+		return a > b
 	case ">=":
-		return c >= 0
+		return a >= b
 	}
 	return false
 }

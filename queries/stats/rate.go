@@ -49,7 +49,8 @@ func Garwood(k int, exposure, level float64) Interval {
 //
 // Reference: the conditioning, F. Ederer and N. Mantel, American Journal of
 // Epidemiology 100 (1974), 165-167; p from the doubled tail as in M. P. Fay's
-// description of the exact Poisson test, The R Journal 2 (2010), 53-58.
+// description of the exact Poisson test, The R Journal 2 (2010), 53-58 (cited
+// from memory, not looked up).
 //
 // Valid for k1, k2 >= 0 and finite exposures above 0, otherwise all NaN. With
 // k2 = 0 estimate and upper limit are +Inf; with k1 = 0 estimate and lower

@@ -2,7 +2,6 @@ package table
 
 import (
 	"fmt"
-	"html"
 	"io"
 	"strings"
 )
@@ -48,7 +47,10 @@ func writeMarkdown(w io.Writer, t *Table, _ Options) error {
 	return err
 }
 
-var markdownSigns = strings.NewReplacer(`\`, `\\`, "|", `\|`, "`", "\\`", "*", `\*`, "_", `\_`, "[", `\[`, "]", `\]`, "#", `\#`)
+// markdownSigns includes the three signs of HTML; html.EscapeString would also
+// write quotes as &#39;, whose # this table would then escape.
+var markdownSigns = strings.NewReplacer("&", "&amp;", "<", "&lt;", ">", "&gt;",
+	`\`, `\\`, "|", `\|`, "`", "\\`", "*", `\*`, "_", `\_`, "~", `\~`, "[", `\[`, "]", `\]`, "#", `\#`)
 
 // markdown takes away the power of signs, and of HTML.
-func markdown(s string) string { return markdownSigns.Replace(html.EscapeString(Clean(s))) }
+func markdown(s string) string { return markdownSigns.Replace(Clean(s)) }

@@ -36,7 +36,7 @@ func forPeople(t *Table) shown {
 		low, hasLow := index[c.Name+"_low"]
 		high, hasHigh := index[c.Name+"_high"]
 		folded := hasLow && hasHigh
-		name := strings.ReplaceAll(c.Name, "_", " ")
+		name := Clean(strings.ReplaceAll(c.Name, "_", " "))
 		if folded {
 			name += " (range)"
 		}
@@ -45,7 +45,7 @@ func forPeople(t *Table) shown {
 		for r, row := range t.Rows {
 			text := cellText(row[i], c.Unit)
 			if folded && !unknown(row[i]) {
-				text += fmt.Sprintf(" (%s-%s)", limit(row[low], c.Unit), limit(row[high], c.Unit))
+				text += limits(row[low], row[high], c.Unit)
 			}
 			s.rows[r] = append(s.rows[r], text)
 		}
@@ -97,18 +97,36 @@ func cellText(c Cell, unit string) string {
 	case float64:
 		switch unit {
 		case "share":
-			return strconv.FormatFloat(100*v, 'f', 1, 64) + "%"
+			return fixed(100*v, 1) + "%"
 		case "hours", "departures", "count":
-			return Thousands(int64(math.Round(v)))
+			return fixed(v, 0)
 		}
-		return strconv.FormatFloat(v, 'f', decimals(v), 64)
+		return fixed(v, decimals(v))
 	}
 	return Clean(fmt.Sprint(c))
 }
 
+// limits writes the limits of a figure behind it: " (6.6-12.1)". A figure
+// whose upper limit has no bound has only a lower one; a figure without limits
+// has no brackets.
+func limits(low, high Cell, unit string) string {
+	if unknown(low) && unknown(high) {
+		return ""
+	}
+	from, to := limit(low, unit), limit(high, unit)
+	if h, ok := high.(float64); ok && math.IsInf(h, 1) {
+		return fmt.Sprintf(" (%s or more)", from)
+	}
+	if strings.HasPrefix(from, "-") || strings.HasPrefix(to, "-") {
+		return fmt.Sprintf(" (%s to %s)", from, to) // a hyphen would read as a sign
+	}
+	return fmt.Sprintf(" (%s-%s)", from, to)
+}
+
 func limit(c Cell, unit string) string { return strings.TrimSuffix(cellText(c, unit), "%") }
 
-// decimals keeps a rate to at least two significant digits.
+// decimals keeps a number to at least two significant digits, so that a small
+// rate never reads as none; beyond six decimals it would only be noise.
 func decimals(v float64) int {
 	switch v = math.Abs(v); {
 	case v >= 100:
@@ -117,17 +135,30 @@ func decimals(v float64) int {
 		return 1
 	case v >= 0.1:
 		return 2
-	case v >= 0.01:
-		return 3
 	}
-	return 4
+	return min(6, 1-int(math.Floor(math.Log10(v))))
+}
+
+// fixed writes a number with that many decimals, the whole part with commas.
+func fixed(v float64, decimals int) string {
+	s := strconv.FormatFloat(v, 'f', decimals, 64)
+	if strings.Trim(s, "-0.") == "" {
+		s = strings.TrimPrefix(s, "-") // rounded to nothing: no sign is left
+	}
+	whole, rest, _ := strings.Cut(s, ".")
+	if rest != "" {
+		rest = "." + rest
+	}
+	return commas(whole) + rest
 }
 
 // Thousands writes a whole number with commas.
-func Thousands(n int64) string {
-	s := strconv.FormatInt(n, 10)
+func Thousands(n int64) string { return commas(strconv.FormatInt(n, 10)) }
+
+// commas parts the digits of a whole number in threes.
+func commas(s string) string {
 	from := 0
-	if n < 0 {
+	if strings.HasPrefix(s, "-") {
 		from = 1
 	}
 	for i := len(s) - 3; i > from; i -= 3 {

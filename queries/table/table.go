@@ -10,8 +10,8 @@ import (
 	"strings"
 )
 
-// Cell is a value of a table: string, int, float64, or nil for unknown. A NaN
-// or an infinity is unknown too.
+// Cell is a value of a table: string, int, float64, or nil for unknown; Write
+// refuses any other type. A NaN or an infinity is unknown too.
 type Cell any
 
 // Column is a column's name and the unit of its numbers: count, share (a
@@ -43,7 +43,7 @@ type Table struct {
 // Options say how a table is shown.
 type Options struct {
 	Width int       // columns of the terminal; 0 for 100
-	Notes io.Writer // where the notes of a form go that has no room for them (CSV); nil for nowhere
+	Notes io.Writer // where title, tests and notes go that a form has no room for (CSV); nil for nowhere
 }
 
 // ErrFormat is a form that is not known.
@@ -66,6 +66,13 @@ func Write(w io.Writer, t *Table, format string, o Options) error {
 	for n, row := range t.Rows {
 		if len(row) != len(t.Columns) {
 			return fmt.Errorf("table %q: row %d has %d cells for %d columns", t.Title, n+1, len(row), len(t.Columns))
+		}
+		for i, c := range row {
+			switch c.(type) {
+			case nil, string, int, float64:
+			default:
+				return fmt.Errorf("table %q: row %d, column %q: a cell cannot hold a %T", t.Title, n+1, t.Columns[i].Name, c)
+			}
 		}
 	}
 	if o.Width <= 0 {
