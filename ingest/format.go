@@ -93,14 +93,14 @@ func refuse(head []byte) error {
 
 // refuseBinary refuses bytes that no text holds: a NUL, or more than one
 // control character in a hundred (a stray one is a slip; a binary file has
-// about ten).
+// about ten). DEL does not count: JSON may hold it as it is.
 func refuseBinary(head []byte) error {
 	controls := 0
 	for _, c := range head {
 		switch {
 		case c == 0:
 			return fmt.Errorf("binary data (a NUL byte at byte %d), not a table of reports: %s in UTF-8", bytes.IndexByte(head, 0)+1, asTable)
-		case c < ' ' && c != '\t' && c != '\n' && c != '\r' && c != '\f' || c == 0x7F:
+		case c < ' ' && c != '\t' && c != '\n' && c != '\r' && c != '\f':
 			controls++
 		}
 	}
