@@ -9,11 +9,49 @@ import (
 	"catena/ingest/corpus"
 )
 
-// telling is one narrative's affirmed hits in order of time.
+// telling is the affirmed hits of one narrative, or of a part of it that tells
+// the event anew, in order of time.
 type telling struct {
-	kind string
-	base int // index of its first tag among all tags
-	hits []placed
+	again bool // it sums up what another tells, or tells it a second time
+	rank  int  // tellings of a higher rank are folded in later
+	base  int  // index of the narrative's first tag among all tags
+	hits  []placed
+}
+
+// tellings splits a narrative's hits into what tells the event, what tells it
+// in brief (an opening sentence that says how it ended) and what tells it a
+// second time.
+func (c *Classifier) tellings(d *text.Doc, kind string, base int, told []placed) []telling {
+	rank := summing(kind)
+	main, brief, again := telling{rank > 0, rank, base, nil}, telling{true, max(1, rank), base, nil}, telling{true, max(1, rank), base, nil}
+	second := len(d.Sentences)
+	for n, s := range d.Sentences {
+		if n > 0 && rulebook.Stands(c.book.Retelling, d, s) {
+			second = n
+			break
+		}
+	}
+	const opening = 4 // sentences
+	for _, p := range told {
+		switch {
+		case p.sentence >= second:
+			again.hits = append(again.hits, p)
+		case rank == 0 && p.sentence < opening && rulebook.Stands(c.book.InBrief, d, d.Sentences[p.sentence]):
+			brief.hits = append(brief.hits, p)
+		default:
+			main.hits = append(main.hits, p)
+		}
+	}
+	if len(main.hits) == 0 { // nothing but a brief telling
+		brief.again, brief.rank = main.again, main.rank
+	}
+	out := []telling{main}
+	for _, t := range []telling{brief, again} {
+		if len(t.hits) > 0 {
+			out = append(out, t)
+		}
+	}
+	return out
 }
 
 // placed is an affirmed tag of a narrative; byWords where the order rests on
@@ -24,6 +62,8 @@ type placed struct {
 	sentence int
 	byWords  bool
 	explains bool // told in a sentence that says what brought the event about
+	when     when
+	since    string // the factor told before it, which when.later counts from
 }
 
 // inTime puts the affirmed hits of a narrative in order of time: the order of
@@ -36,13 +76,39 @@ func (c *Classifier) inTime(d *text.Doc, hits []hit) []placed {
 		for j < len(hits) && hits[j].sentence == hits[i].sentence {
 			j++
 		}
-		out = append(out, c.sentenceInTime(d, hits[i:j], i)...)
+		out = append(out, c.sentenceInTime(d, hits[i:j], i, lastFactor(out))...)
 		i = j
 	}
+	byClock(out)
 	return out
 }
 
-func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed {
+func lastFactor(told []placed) string {
+	if len(told) == 0 {
+		return ""
+	}
+	return told[len(told)-1].factor
+}
+
+// byClock moves what happened at an earlier time of day ahead of what happened
+// later, where both times are told.
+func byClock(told []placed) {
+	for j := range told {
+		if !told[j].when.hasTime {
+			continue
+		}
+		for i := range j {
+			if told[i].when.hasTime && told[i].when.clock > told[j].when.clock {
+				p := told[j]
+				copy(told[i+1:j+1], told[i:j])
+				told[i] = p
+				break
+			}
+		}
+	}
+}
+
+func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int, before string) []placed {
 	affirmed := c.affirmed(hits)
 	if len(affirmed) == 0 {
 		return nil
@@ -51,9 +117,20 @@ func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed 
 	explains := rulebook.Stands(c.book.Explains, d, d.Sentences[n])
 	out := make([]placed, 0, len(affirmed))
 	t := c.turning(d, d.Sentences[n], len(affirmed) > 1)
+	var at []when
+	if stamps := c.stamps(d, d.Sentences[n]); len(stamps) > 0 {
+		starts := make([]int, len(affirmed))
+		for k, i := range affirmed {
+			starts[k] = hits[i].Start
+		}
+		at = times(stamps, starts)
+	}
 	from := 0 // where the present stretch begins in out
-	for _, i := range affirmed {
+	for k, i := range affirmed {
 		p := placed{tag: base + i, factor: hits[i].Factor, sentence: n, explains: explains}
+		if at != nil {
+			p.when = at[k]
+		}
 		switch t.at(hits[i].match.First) {
 		case onward:
 			from = len(out)
@@ -64,6 +141,13 @@ func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int) []placed 
 			from++ // what is turned keeps its own order
 		default:
 			out = append(out, p)
+		}
+	}
+	for k := range out {
+		if k == 0 {
+			out[k].since = before
+		} else {
+			out[k].since = out[k-1].factor
 		}
 	}
 	return out
@@ -163,17 +247,22 @@ func (c *Classifier) standsFor(hits []hit, h hit) bool {
 // explains.
 func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 	links := []corpus.Link{}
-	slices.SortStableFunc(told, func(a, b telling) int { return summing(a.kind) - summing(b.kind) })
-	summary := len(told) > 0 && summing(told[0].kind) > 0 // nothing but summaries
+	slices.SortStableFunc(told, func(a, b telling) int { return a.rank - b.rank })
+	summary := !slices.ContainsFunc(told, func(t telling) bool { return t.rank == 0 }) // nothing but summaries
+	at := map[string]placed{}
 	for _, t := range told {
 		for i, p := range t.hits {
 			if linked(links, p.factor) >= 0 {
 				continue
 			}
 			order := "text"
-			if p.byWords {
+			switch {
+			case p.when.hasTime && timed(told) > 1:
+				order = "clock"
+			case p.byWords:
 				order = "words"
 			}
+			at[p.factor] = p
 			links = slices.Insert(links, c.place(links, t, i), corpus.Link{Factor: p.factor, Tag: t.base + p.tag, Order: order})
 		}
 	}
@@ -181,9 +270,36 @@ func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 	if summary {
 		c.settle(links, c.book.Usually)
 	}
+	for i := range links[min(1, len(links)):] {
+		elapsed(&links[i+1], at[links[i].Factor], at[links[i+1].Factor])
+	}
 	chain := corpus.Chain{Links: links}
 	c.ending(&chain)
 	return chain
+}
+
+// timed counts the factors of which a time of day is told: one alone orders
+// nothing.
+func timed(told []telling) int {
+	var factors []string
+	for _, t := range told {
+		for _, p := range t.hits {
+			if p.when.hasTime && !slices.Contains(factors, p.factor) {
+				factors = append(factors, p.factor)
+			}
+		}
+	}
+	return len(factors)
+}
+
+// elapsed sets the seconds from one link to the next, where they are told.
+func elapsed(l *corpus.Link, before, p placed) {
+	switch {
+	case before.when.hasTime && p.when.hasTime && p.when.clock >= before.when.clock:
+		l.Seconds = p.when.clock - before.when.clock
+	case p.when.hasGap && p.since == before.factor:
+		l.Seconds = p.when.later
+	}
 }
 
 func linked(links []corpus.Link, factor string) int {
@@ -195,7 +311,7 @@ func (c *Classifier) place(links []corpus.Link, t telling, i int) int {
 	p := t.hits[i]
 	at := len(links)
 	for _, later := range t.hits[i+1:] {
-		if k := linked(links, later.factor); k >= 0 && (summing(t.kind) > 0 || later.sentence == p.sentence) {
+		if k := linked(links, later.factor); k >= 0 && (t.again || later.sentence == p.sentence) {
 			at = k
 			break
 		}

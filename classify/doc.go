@@ -9,7 +9,9 @@
 //	              cues around a match
 //	side.go       left or right, from the words around a match
 //	infer.go      what the side of a dead engine implies
-//	quantity.go   what a speed and a minimum control speed imply
+//	actor.go      who did it
+//	quantity.go   the numbers told with a factor, and what two speeds imply
+//	clock.go      times of day and elapsed times
 //	chain.go      the order of the affirmed tags
 //	explain.go    why a tag was made, and why one was not
 //	examples.go   the examples of the rule book itself
@@ -26,4 +28,4 @@ package classify
 
 // EngineVersion changes whenever this package would tag the same text with
 // the same book in another way; the collection then tags everything again.
-const EngineVersion = 1
+const EngineVersion = 2

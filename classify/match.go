@@ -33,13 +33,14 @@ type hit struct {
 	sentence int
 	match    rulebook.Match
 	rule     *rulebook.Rule
-	cue      *cue // what decided the assertion, nil where nothing did
+	cue      *cue         // what decided the assertion, nil where nothing did
+	told     text.Measure // behind Quantity
 }
 
 // Tag finds the factors of an occurrence and its chain. Tags are in order of
 // narrative and place; Tags and Chain.Links are never nil.
 func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
-	out := corpus.Tagged{Occurrence: *o, Rulebook: c.Version(), Tags: []corpus.Tag{}}
+	out := corpus.Tagged{Occurrence: *o, CutOff: o.CutOffs(), Rulebook: c.Version(), Tags: []corpus.Tag{}}
 	var told []telling
 	for n, narrative := range o.Narratives {
 		d := c.book.Lexicon.Analyse(narrative.Text)
@@ -47,7 +48,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 		for i := range hits {
 			hits[i].Narrative = n
 		}
-		told = append(told, telling{narrative.Kind, len(out.Tags), c.inTime(d, hits)})
+		told = append(told, c.tellings(d, narrative.Kind, len(out.Tags), c.inTime(d, hits))...)
 		for _, h := range hits {
 			out.Tags = append(out.Tags, h.Tag)
 		}
@@ -66,7 +67,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 				hits = append(hits, hit{
 					Tag: corpus.Tag{
 						Factor: r.Factor, Basis: basis(r), Span: m.Shown, Quote: m.Shown.Of(d.Text),
-						Rule: r.ID, Strength: r.Strength, Side: side(c.book.Lexicon, r, d, s, m),
+						Rule: r.ID, RuleHash: r.Hash, Strength: r.Strength, Side: side(c.book.Lexicon, r, d, s, m),
 					},
 					sentence: n, match: m, rule: r,
 				})
@@ -80,9 +81,15 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 			hits[i].Assertion, hits[i].cue = assertion(d, cues, hits[i].match, kind)
 		}
 		hits = append(hits[:from], distinct(hits[from:])...)
+		for i := from; i < len(hits); i++ {
+			hits[i].Actor = c.doer(d, n, &hits[i])
+		}
 	}
+	// what does not hold goes first, so that it cannot bear on anything else:
+	// see Touches
+	hits = c.inPlace(hits)
 	inherit(c.book.Lexicon, d, hits)
-	return c.inPlace(c.belowByNumbers(d, onDeadSide(c.book, d, hits, twin), kind, twin))
+	return c.quantities(d, onDeadSide(c.book, d, hits, twin), kind, twin)
 }
 
 // reads tells whether a rule reads narratives of a kind.
@@ -131,6 +138,8 @@ func (c *Classifier) refused(r *rulebook.Rule, d *text.Doc, n int, m rulebook.Ma
 		return "words that the rule wants in the same sentence are missing (with)"
 	case len(r.Near) > 0 && !c.near(r, d, n):
 		return "words that the rule wants in this or a neighbouring sentence are missing (near)"
+	case len(r.NotBy) > 0 && slices.Contains(r.NotBy, c.actor(d, n, m)):
+		return "it is the deed of somebody whom the rule leaves out (not by)"
 	case len(r.Nowhere) > 0 && slices.ContainsFunc(d.Sentences, func(s text.Sentence) bool { return rulebook.Stands(r.Nowhere, d, s) }):
 		return "words that the rule excludes stand in the narrative (nowhere)"
 	}

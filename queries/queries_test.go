@@ -217,3 +217,51 @@ func TestCheckExposure(t *testing.T) {
 		}
 	}
 }
+
+// Halving the asymmetric moment lowers the speed at which full rudder still
+// balances it by the square root of two (common practice, no source): at
+// Vmc/sqrt(2) full rudder gives half of the moment.
+func TestBalance(t *testing.T) {
+	for _, c := range []struct{ v, vmc, want float64 }{{84 / math.Sqrt2, 84, 0.5}, {42, 84, 0.25}, {71, 84, 0.71443}, {84, 84, 0}, {90, 84, 0}, {0, 84, 0}} {
+		got, ok := Balance(&corpus.Quantity{Kind: "airspeed", Value: c.v, Unit: "kt", Limit: c.vmc, LimitKind: "vmc"})
+		if math.Abs(got-c.want) > 1e-5 || ok != (c.want > 0) {
+			t.Errorf("%v against %v: %v, want %v", c.v, c.vmc, got, c.want)
+		}
+	}
+	if _, ok := Balance(&corpus.Quantity{Kind: "airspeed", Value: 50, Limit: 60, LimitKind: "stall"}); ok {
+		t.Error("a stall speed has no balance ratio")
+	}
+}
+
+func TestRaisesVmc(t *testing.T) {
+	tag := func(factor, quote string, a corpus.Assertion) corpus.Tag {
+		return corpus.Tag{Factor: factor, Quote: quote, Assertion: a}
+	}
+	got := RaisesVmc([]corpus.Tag{
+		tag("wrong-bank", "wings were held level", corpus.Affirmed), tag("not-secured", "did not feather the propeller", corpus.Affirmed),
+		tag("not-secured", "gear was left down", corpus.Affirmed), tag("weight-balance", "aft of the limit", corpus.Denied),
+	})
+	if want := "wings held level, propeller not feathered"; strings.Join(got, ", ") != want {
+		t.Errorf("%v, want %s", got, want)
+	}
+}
+
+// A text that stops in mid-sentence is counted where it tells the factor, and
+// stands in no share.
+func TestCutOffStandsInNoShare(t *testing.T) {
+	cut := event("s", "2020-01-01", "", "stall")
+	cut.CutOff = true
+	silent := event("s", "2020-02-01", "")
+	silent.CutOff = true
+	got, err := Trend(records(cut, silent, event("s", "2020-03-01", "", "stall"), event("s", "2020-04-01", "")), nil,
+		TrendOptions{Scope: Scope{Tree: catalogue.Builtin()}, Factors: []string{"stall"}, By: "year", Per: "hours", Scale: 1, Level: 0.95})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if r := got.Rows[0]; r[2] != 2 || r[7] != 0.5 {
+		t.Errorf("count %v, share %v; want 2 and 1 of 2", r[2], r[7])
+	}
+	if !strings.Contains(strings.Join(got.Notes, "\n"), "2 narratives stop in mid-sentence") {
+		t.Errorf("notes %q", got.Notes)
+	}
+}

@@ -73,7 +73,8 @@ type trend struct {
 	TrendOptions
 	cells   map[string]*cell
 	total   int
-	usable  int
+	usable  int                             // with a narrative that is whole
+	cutOff  int                             // with one that stops in mid-sentence
 	sources map[string]map[string]*coverage // source -> period -> what it delivered
 
 	usableBySource map[string]int
@@ -83,8 +84,9 @@ type trend struct {
 // cell is what one row of the table counts.
 type cell struct {
 	records  int
-	usable   int
+	usable   int // with a narrative that is whole
 	factor   map[string]int
+	shared   map[string]int // those of factor that count in a share
 	inferred map[string]int
 }
 
@@ -112,12 +114,16 @@ func (t *trend) add(r *record) {
 	k := t.key(o)
 	c := t.cells[k]
 	if c == nil {
-		c = &cell{factor: map[string]int{}, inferred: map[string]int{}}
+		c = &cell{factor: map[string]int{}, shared: map[string]int{}, inferred: map[string]int{}}
 		t.cells[k] = c
 	}
 	t.total++
 	c.records++
-	if r.Usable {
+	if r.Usable && r.CutOff {
+		t.cutOff++ // what it does not mention is not known, so it bears on no share
+	}
+	whole := r.Usable && !r.CutOff
+	if whole {
 		t.usable++
 		c.usable++
 		t.usableBySource[o.Source]++
@@ -125,6 +131,9 @@ func (t *trend) add(r *record) {
 	for _, f := range t.Factors {
 		if r.has(f) {
 			c.factor[f]++
+			if whole {
+				c.shared[f]++
+			}
 		}
 		if r.inferred[f] {
 			c.inferred[f]++
@@ -206,7 +215,7 @@ func (t *trend) row(key, factor string, d *denominators) []table.Cell {
 	share := stats.Interval{Estimate: math.NaN(), Low: math.NaN(), High: math.NaN()}
 	if factor != "" {
 		count, inferred = c.factor[factor], c.inferred[factor]
-		share = stats.Wilson(min(count, c.usable), c.usable, t.Level)
+		share = stats.Wilson(c.shared[factor], c.usable, t.Level)
 	}
 	exposure := d.of(key)
 	rate := stats.Garwood(count, exposure/t.Scale, t.Level)
@@ -246,6 +255,10 @@ func (t *trend) notes(keys, factors []string, d *denominators) []string {
 	if len(t.Factors) > 0 {
 		notes = append(notes, fmt.Sprintf("share: occurrences whose narratives affirm the factor, of the %d of %d with a usable narrative; what is not mentioned is not said not to have happened",
 			t.usable, t.total))
+		if t.cutOff > 0 {
+			notes = append(notes, fmt.Sprintf("%s in mid-sentence: counted where the factor is told, but left out of shares, since what was cut off is not known",
+				plural(t.cutOff, "narrative")+map[bool]string{true: " stops", false: " stop"}[t.cutOff == 1]))
+		}
 	}
 	if t.Only != nil {
 		notes = append(notes, "only those where "+filter.Explain(t.Only))

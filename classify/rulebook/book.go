@@ -7,7 +7,9 @@ import (
 	"encoding/hex"
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
+	"maps"
 	"path"
 	"slices"
 	"strings"
@@ -24,6 +26,7 @@ import (
 // Book is a compiled rule book. It does not change after Load.
 type Book struct {
 	Version  string // hash of all that the book holds, 12 hexadecimal digits
+	Common   string // hash of what bears on the tags of every rule: cues, order, measures ...
 	Tree     *catalogue.Tree
 	Lexicon  *text.Lexicon
 	Rules    []*Rule
@@ -34,9 +37,13 @@ type Book struct {
 	Always   []Before   // what comes first in time, however it is told
 	Usually  []Before   // what comes first where an event is summed up
 
-	MinimumIs   []*Pattern // a minimum control speed is told; what is shown is the number
-	SpeedFlown  []*Pattern // a speed flown is told; what is shown is the number
-	LandingRoll []*Pattern // words of a landing roll, where an engine has no dead side
+	Limits      []Limit             // where a speed that limits the flight is told
+	SpeedFlown  []*Pattern          // a speed flown is told; what is shown is the number
+	Measures    map[string][]string // factor -> kinds of measure that belong to it
+	Actors      []Actor             // words for those who act
+	Retelling   []*Pattern          // words of a sentence from which the event is told a second time
+	InBrief     []*Pattern          // words of an opening sentence that tells it in brief
+	LandingRoll []*Pattern          // words of a landing roll, where an engine has no dead side
 
 	rules  index[*Rule]
 	cues   index[*Cue]
@@ -61,6 +68,7 @@ type Rule struct {
 	Near     []*Pattern       // one of these must stand in the same or a neighbouring sentence
 	Nowhere  []*Pattern       // none of these may stand anywhere in the narrative
 	PartOf   []*Pattern       // the match may not overlap one of these
+	NotBy    []string         // actors whose deed it is not
 	After    []catalogue.Kind // an affirmed factor of one of these kinds must come before
 	Examples []Example
 	File     string
@@ -104,6 +112,18 @@ const (
 	Backward Reach = "backward"
 	Whole    Reach = "sentence"
 )
+
+// Limit is a named speed and the patterns that show its number.
+type Limit struct {
+	Kind string // vmc, stall or blue-line
+	Look []*Pattern
+}
+
+// Actor is a part that people play, and the words for it.
+type Actor struct {
+	Name string // pilot, co-pilot, student, instructor, controller or mechanic
+	Look []*Pattern
+}
 
 // Before says that one factor (or one below it) comes before another in time.
 type Before struct{ First, Then string }
@@ -166,7 +186,13 @@ type fileYAML struct {
 	Usually  []located            `yaml:"in summaries"`
 	Landing  []located            `yaml:"landing roll"`
 	Minimum  []located            `yaml:"minimum control speed is"`
+	Stall    []located            `yaml:"stall speed is"`
+	BlueLine []located            `yaml:"blue line is"`
 	Speed    []located            `yaml:"speed flown is"`
+	Measures map[string][]string  `yaml:"measures"`
+	Actors   map[string][]located `yaml:"actors"`
+	Retold   []located            `yaml:"told again"`
+	InBrief  []located            `yaml:"told in brief"`
 }
 
 type ruleYAML struct {
@@ -184,6 +210,7 @@ type ruleYAML struct {
 	Near      []located `yaml:"near"`
 	Nowhere   []located `yaml:"nowhere"`
 	PartOf    []located `yaml:"not part of"`
+	NotBy     []string  `yaml:"not by"`
 	After     []string  `yaml:"only after"`
 	Match     []located `yaml:"match"`
 	NoMatch   []located `yaml:"no match"`
@@ -334,6 +361,8 @@ func (l *loader) add(name string, file fileYAML) {
 func (l *loader) compile() {
 	b := l.book
 	b.Version = hex.EncodeToString(l.hash)[:12]
+	b.Limits = []Limit{{Kind: "vmc"}, {Kind: "stall"}, {Kind: "blue-line"}}
+	b.Measures = map[string][]string{}
 	c := &compiler{lexicon: b.Lexicon, terms: b.terms, used: map[string]bool{}}
 	ids := make([]string, 0, len(l.rules))
 	for id := range l.rules {
@@ -345,6 +374,7 @@ func (l *loader) compile() {
 			b.Rules = append(b.Rules, l.rule(c, id, l.files[id], y))
 		}
 	}
+	clear(c.used)
 	for i, f := range l.cues {
 		for _, y := range f.Cues {
 			b.Cues = append(b.Cues, l.cue(c, l.names[i], y))
@@ -354,10 +384,17 @@ func (l *loader) compile() {
 		b.Explains = append(b.Explains, l.patterns(c, l.names[i], f.Explains)...)
 		b.Always = append(b.Always, l.befores(l.names[i], f.Always)...)
 		b.Usually = append(b.Usually, l.befores(l.names[i], f.Usually)...)
-		b.MinimumIs = append(b.MinimumIs, l.patterns(c, l.names[i], f.Minimum)...)
+		for k, from := range [][]located{f.Minimum, f.Stall, f.BlueLine} {
+			b.Limits[k].Look = append(b.Limits[k].Look, l.patterns(c, l.names[i], from)...)
+		}
+		l.measures(l.names[i], f.Measures)
+		l.actors(c, l.names[i], f.Actors)
+		b.InBrief = append(b.InBrief, l.patterns(c, l.names[i], f.InBrief)...)
+		b.Retelling = append(b.Retelling, l.patterns(c, l.names[i], f.Retold)...)
 		b.SpeedFlown = append(b.SpeedFlown, l.patterns(c, l.names[i], f.Speed)...)
 		b.LandingRoll = append(b.LandingRoll, l.patterns(c, l.names[i], f.Landing)...)
 	}
+	b.Common = l.commonHash(c.used)
 	// terms that no rule uses are compiled all the same, so that their faults show
 	for name := range b.terms {
 		if _, err := c.term(name); err != nil {
@@ -377,6 +414,41 @@ func (l *loader) compile() {
 	b.onward.add(struct{}{}, b.Onward)
 	slices.SortFunc(l.faults, func(a, b error) int { return cmp.Compare(a.Error(), b.Error()) })
 	l.faults = slices.CompactFunc(l.faults, func(a, b error) bool { return a.Error() == b.Error() })
+}
+
+// measures adds, for each kind of measure, the factors that it belongs to.
+func (l *loader) measures(file string, kinds map[string][]string) {
+	for kind, factors := range kinds {
+		for _, id := range factors {
+			if _, known := l.book.Tree.Factor(id); !known {
+				l.fault(file, 1, "measures: the catalogue has no factor %q", id)
+			}
+			l.book.Measures[id] = append(l.book.Measures[id], kind)
+		}
+	}
+	for _, of := range l.book.Measures {
+		slices.Sort(of)
+	}
+}
+
+// actorNames are the parts that a tag can name.
+var actorNames = []string{"pilot", "co-pilot", "student", "instructor", "controller", "mechanic"}
+
+func (l *loader) actors(c *compiler, file string, actors map[string][]located) {
+	for _, name := range actorNames {
+		if from := actors[name]; from != nil {
+			l.book.Actors = append(l.book.Actors, Actor{name, l.patterns(c, file, from)})
+		}
+	}
+	for name, from := range actors {
+		if !slices.Contains(actorNames, name) {
+			line := 1
+			if len(from) > 0 {
+				line = from[0].line
+			}
+			l.fault(file, line, "actors: no such part %q; want one of %s", name, strings.Join(actorNames, ", "))
+		}
+	}
 }
 
 // befores reads "a < b, c".
@@ -431,7 +503,12 @@ func (l *loader) patterns(c *compiler, file string, sources []located) []*Patter
 func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	r := &Rule{
 		ID: id, DeadSide: y.DeadSide, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
-		File: file, Line: y.Name.line,
+		File: file, Line: y.Name.line, NotBy: y.NotBy,
+	}
+	for _, name := range y.NotBy {
+		if !slices.Contains(actorNames, name) {
+			l.fault(file, r.Line, "rule %q: not by: no such part %q; want one of %s", id, name, strings.Join(actorNames, ", "))
+		}
 	}
 	if r.Strength < 0 || r.Strength > 1 {
 		l.fault(file, r.Line, "rule %q: strength %g is not between 0 and 1", id, r.Strength)
@@ -482,24 +559,57 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 // patterns and each term below them.
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
-	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.Kinds)
+	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.Kinds, y.NotBy)
 	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
 			fmt.Fprint(h, "\n", s.text)
 		}
 	}
-	names := make([]string, 0, len(used))
-	for name := range used {
-		names = append(names, name)
-	}
-	slices.Sort(names)
-	for _, name := range names {
+	l.hashTerms(h, used)
+	return hex.EncodeToString(h.Sum(nil))[:12]
+}
+
+func (l *loader) hashTerms(h io.Writer, used map[string]bool) {
+	for _, name := range slices.Sorted(maps.Keys(used)) {
 		fmt.Fprint(h, "\n=", name)
-		for _, s := range l.book.terms[name].source {
+		if t := l.book.terms[name]; t != nil {
+			for _, s := range t.source {
+				fmt.Fprint(h, "\n", s.text)
+			}
+		}
+	}
+}
+
+// commonHash covers the sections that bear on the tags of every rule, with the
+// terms that they use.
+func (l *loader) commonHash(used map[string]bool) string {
+	h := sha256.New()
+	texts := func(name string, from []located) {
+		if len(from) == 0 {
+			return // a further file without such a section changes nothing
+		}
+		fmt.Fprint(h, "\n--", name)
+		for _, s := range from {
 			fmt.Fprint(h, "\n", s.text)
 		}
 	}
+	for _, f := range l.cues {
+		for _, y := range f.Cues {
+			fmt.Fprintf(h, "\n%s|%s|%s|%d", y.Sense, y.Within, y.Reach, y.Words)
+			texts("cue", y.Look)
+		}
+		for i, from := range [][]located{f.Order, f.Onward, f.Explains, f.Always, f.Usually, f.Landing, f.Minimum, f.Stall, f.BlueLine, f.Speed, f.Retold, f.InBrief} {
+			texts(fmt.Sprint(i), from)
+		}
+		for _, kind := range slices.Sorted(maps.Keys(f.Measures)) {
+			fmt.Fprint(h, "\n", kind, f.Measures[kind])
+		}
+		for _, name := range slices.Sorted(maps.Keys(f.Actors)) {
+			texts(name, f.Actors[name])
+		}
+	}
+	l.hashTerms(h, used)
 	return hex.EncodeToString(h.Sum(nil))[:12]
 }
 
@@ -671,5 +781,8 @@ func (b *Book) mentions(name string) bool {
 			return true
 		}
 	}
-	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || has(b.MinimumIs) || has(b.SpeedFlown) || slices.ContainsFunc(b.Cues, func(c *Cue) bool { return has(c.Look) })
+	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || has(b.Retelling) || has(b.InBrief) || has(b.SpeedFlown) ||
+		slices.ContainsFunc(b.Limits, func(x Limit) bool { return has(x.Look) }) ||
+		slices.ContainsFunc(b.Actors, func(x Actor) bool { return has(x.Look) }) ||
+		slices.ContainsFunc(b.Cues, func(x *Cue) bool { return has(x.Look) })
 }

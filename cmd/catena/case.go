@@ -85,7 +85,7 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 	}
 	for i, l := range r.Chain.Links {
 		t := r.Tags[l.Tag]
-		fmt.Fprintf(out, "  %d. %s%s\n     %s\n     (%s, rule %s, strength %.2f)\n", i+1, l.Factor, sideWords(t), strings.TrimSpace(sentence(t)), kindOf(l.Factor), t.Rule, t.Strength)
+		fmt.Fprintf(out, "  %d. %s%s\n     %s\n     (%s, rule %s, strength %.2f)\n", i+1, l.Factor, linkWords(l, t), strings.TrimSpace(sentence(t)), kindOf(l.Factor), t.Rule, t.Strength)
 	}
 	printBalance(out, r)
 	if r.Chain.BrokenBy != "" {
@@ -102,32 +102,64 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 		fmt.Fprintf(out, "  %s, %s\n     %s\n", t.Factor, t.Assertion, strings.TrimSpace(sentence(t)))
 	}
 	for n, t := range r.Narratives {
+		if t.CutOff() {
+			t.Text += " [...]"
+			fmt.Fprintf(out, "\nThe next text stops in mid-sentence: what it does not mention is not known.")
+		}
 		fmt.Fprintf(out, "\nNarrative %d (%s):\n%s\n", n+1, clean(t.Kind), table.Wrap(clean(t.Text), width(out), ""))
 	}
 	fmt.Fprintf(out, "\nThis is what the report tells, not a finding of cause. The investigating authority,\nthe aircraft flight manual, local regulations and licensed instructors come first.\n")
 }
 
-// printBalance tells, where a speed flown and a minimum control speed are both
-// told, the share of the needed yawing moment that full rudder could still
-// give: the square of their ratio (common practice, no source). It is shown
-// below 1 only.
+// printBalance tells, where a speed flown under the minimum control speed is
+// told, how much of the needed yawing moment full rudder could still give, and
+// what raised the actual minimum control speed in this case.
 func printBalance(out io.Writer, r *store.Row) {
 	for _, t := range r.Tags {
-		q := t.Quantity
-		if q == nil || q.LimitKind != "vmc" || q.Limit <= 0 || q.Value >= q.Limit {
+		ratio, ok := queries.Balance(t.Quantity)
+		if !ok {
 			continue
 		}
-		ratio := q.Value / q.Limit
+		q := t.Quantity
 		fmt.Fprintf(out, "  %.0f %s flown against a minimum control speed of %.0f: balance ratio %.2f, the share of the yawing moment that\n"+
-			"  full rudder could still give. A published speed holds for the conditions of its certification only.\n", q.Value, q.Unit, q.Limit, ratio*ratio)
+			"  full rudder could still give. A published speed holds for the conditions of its certification only.\n", q.Value, q.Unit, q.Limit, ratio)
+		if raised := queries.RaisesVmc(r.Tags); len(raised) > 0 {
+			fmt.Fprintf(out, "  told here, and raising the actual speed: %s\n", strings.Join(raised, ", "))
+		}
+		return
 	}
 }
 
-func sideWords(t corpus.Tag) string {
-	if t.Side == "" {
+// linkWords says what a link tells beyond its factor: side, actor, number,
+// time since the link before.
+func linkWords(l corpus.Link, t corpus.Tag) string {
+	var words []string
+	if t.Side != "" {
+		words = append(words, t.Side)
+	}
+	if t.Actor != "" {
+		words = append(words, "by the "+t.Actor)
+	}
+	if q := t.Quantity; q != nil {
+		s := fmt.Sprintf("%s %.4g %s", q.Kind, q.Value, q.Unit)
+		if q.Told != "" {
+			s += ", told in " + q.Told
+		}
+		if q.LimitKind != "" {
+			s += fmt.Sprintf(", %s %.4g: margin %+.4g", strings.ReplaceAll(q.LimitKind, "-", " "), q.Limit, q.Value-q.Limit)
+		}
+		words = append(words, s)
+	}
+	if t.Basis == corpus.Inferred {
+		words = append(words, "inferred")
+	}
+	if l.Seconds > 0 {
+		words = append(words, fmt.Sprintf("%.4g s after the link before", l.Seconds))
+	}
+	if len(words) == 0 {
 		return ""
 	}
-	return " (" + t.Side + ")"
+	return " (" + clean(strings.Join(words, "; ")) + ")"
 }
 
 func kindOf(factor string) catalogue.Kind {

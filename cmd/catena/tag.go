@@ -29,8 +29,9 @@ func newTagCommand(g *globalOptions) *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "tag",
 		Short: "Tag what is not yet tagged by this rule book, or all again",
-		Long: `Tags the occurrences of the collection whose tags another rule book made; the
-new tags become visible in one step. With --stream it needs no collection: it
+		Long: `Tags the occurrences of the collection whose tags another rule book made, as
+far as what has changed in it touches them; the new tags become visible in one
+step. With --stream it needs no collection: it
 reads occurrence records (NDJSON) on standard input and writes them tagged to
 standard output, in order.
 
@@ -74,7 +75,11 @@ func runTag(cmd *cobra.Command, g *globalOptions, o *tagOptions) error {
 	if err != nil {
 		return err
 	}
-	fmt.Fprintf(cmd.OutOrStdout(), "tagged %d of %d occurrences with rule book %s\n", n, totals.Occurrences, c.Classifier.Version())
+	fmt.Fprintf(cmd.OutOrStdout(), "tagged %d of %d occurrences with rule book %s", n, totals.Occurrences, c.Classifier.Version())
+	if rest := totals.Occurrences - n; rest > 0 {
+		fmt.Fprintf(cmd.OutOrStdout(), "; what has changed does not touch the other %d", rest)
+	}
+	fmt.Fprintln(cmd.OutOrStdout())
 	return nil
 }
 

@@ -2,6 +2,7 @@ package collection
 
 import (
 	"context"
+	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
@@ -213,5 +214,72 @@ func TestRetagFollowsTheUsersRules(t *testing.T) {
 	again := openTo(t, dir, false)
 	if again.Classifier.Version() == before {
 		t.Error("the user's rules are forgotten")
+	}
+}
+
+// Tagging again touches only what a change of rules touches, and gives the
+// same tags and chains as tagging everything anew.
+func TestRetagTouchesOnlyWhatChanged(t *testing.T) {
+	text := ""
+	for _, name := range []string{"written-a", "written-b", "made"} {
+		data, err := os.ReadFile(filepath.Join("..", "..", "cmd", "catena", "demo", name+".ndjson"))
+		if err != nil {
+			t.Fatal(err)
+		}
+		text += string(data)
+	}
+	dir, rules := t.TempDir(), t.TempDir()
+	c := openTo(t, dir, true)
+	load(t, c, text)
+	c.Close()
+	write := func(name, rule string) {
+		if err := os.WriteFile(filepath.Join(rules, name), []byte(rule), 0o600); err != nil {
+			t.Fatal(err)
+		}
+	}
+	content := func(c *Collection) string {
+		var b strings.Builder
+		for r, err := range c.Store.Each(context.Background(), store.Select{}) {
+			if err != nil {
+				t.Fatal(err)
+			}
+			line, err := json.Marshal(r.Tagged)
+			if err != nil {
+				t.Fatal(err)
+			}
+			b.Write(line)
+			b.WriteByte('\n')
+		}
+		return b.String()
+	}
+	steps := []struct{ name, rule string }{
+		{"a.yaml", "# a remark only\n"},
+		{"b.yaml", "factor: turn-back\nrules:\n  - rule: probe\n    look for: [\"turn~ (left|right)\"]\n    match: [\"It turned left.\"]\n"},
+		{"c.yaml", "factor: recovered\nrules:\n  - rule: landed-safely\n    off: true\n  - rule: flight-went-on\n    off: true\n"},
+		{"d.yaml", "factor: power-loss\nrules:\n  - rule: probe\n    side: engine\n    look for: [\"{engine} ..3 (idle|idling)\"]\n    match: [\"The engine was at idle.\"]\n"},
+	}
+	for i, step := range steps {
+		write(step.name, step.rule)
+		c, err := Open(context.Background(), dir, Options{Write: true, Rules: rules})
+		if err != nil {
+			t.Fatal(err)
+		}
+		n, err := c.Retag(context.Background(), false, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		some := content(c)
+		all, err := c.Retag(context.Background(), true, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if got := content(c); got != some {
+			t.Errorf("%s: tagging everything again gives other tags than tagging the %d that the change touches", step.name, n)
+		}
+		if i == 0 && n != 0 || n >= all {
+			t.Errorf("%s: tagged %d of %d", step.name, n, all)
+		}
+		t.Logf("%s: %d of %d tagged again", step.name, n, all)
+		c.Close()
 	}
 }

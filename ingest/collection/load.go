@@ -217,6 +217,10 @@ func (l *loading) write(ctx context.Context, order <-chan *job, feed chan<- []in
 		if err != nil {
 			return err
 		}
+		if err := b.Rulebook(l.c.Classifier.Version(), l.c.Classifier.Parts()); err != nil {
+			b.Rollback()
+			return err
+		}
 		var written []indexed
 		var spools []string
 		sum := *l.sum

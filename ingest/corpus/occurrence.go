@@ -1,5 +1,10 @@
 package corpus
 
+import (
+	"strings"
+	"unicode/utf8"
+)
+
 // Occurrence is one reported event, with its fields and narratives.
 //
 // Identity is (Source, ID). The JSON form is the occurrence record, the
@@ -44,6 +49,33 @@ type Aircraft struct {
 type Narrative struct {
 	Kind string `json:"kind"` // synopsis, factual, analysis, cause, reporter or remarks
 	Text string `json:"text"`
+}
+
+// CutOff tells whether the text stops in mid-sentence because its publisher
+// allows no more characters. What such a text does not mention may have stood
+// in the part that is lost. The lengths were met in published data.
+func (n *Narrative) CutOff() bool {
+	text := strings.TrimRight(n.Text, " \t\r\n")
+	if text == "" || strings.ContainsRune(".!?\")", rune(text[len(text)-1])) {
+		return false
+	}
+	switch chars := utf8.RuneCountInString(n.Text); chars {
+	case 115, 255, 1000, 2000, 4000, 32767:
+		return true
+	default:
+		return chars == 114 && n.Kind == "remarks" // a space was trimmed
+	}
+}
+
+// CutOffs lists the narratives that stop in mid-sentence, nil where none does.
+func (o *Occurrence) CutOffs() []int {
+	var out []int
+	for n := range o.Narratives {
+		if o.Narratives[n].CutOff() {
+			out = append(out, n)
+		}
+	}
+	return out
 }
 
 // Code is an official classification that the publisher gave.

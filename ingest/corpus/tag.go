@@ -36,18 +36,21 @@ type Tag struct {
 	Span
 	Quote    string    `json:"quote"`
 	Rule     string    `json:"rule"`
-	Strength float64   `json:"strength"` // in [0, 1]
+	RuleHash string    `json:"rule_hash,omitempty"` // of the rule with all terms that it uses
+	Strength float64   `json:"strength"`            // in [0, 1]
 	Side     string    `json:"side,omitempty"`
 	Actor    string    `json:"actor,omitempty"`
 	Quantity *Quantity `json:"quantity,omitempty"`
 }
 
 // Quantity is a measured value told with a factor, and the limit that it is
-// compared with, where one is told.
+// compared with, where one is told. Value and Limit are in Unit; Told is the
+// unit of the text where it is another ("mph").
 type Quantity struct {
 	Kind      string  `json:"kind"`
 	Value     float64 `json:"value"`
 	Unit      string  `json:"unit"`
+	Told      string  `json:"told,omitempty"`
 	Limit     float64 `json:"limit,omitempty"`
 	LimitKind string  `json:"limit_kind,omitempty"`
 }
@@ -72,6 +75,7 @@ type Chain struct {
 // Chain.Links are never null in JSON.
 type Tagged struct {
 	Occurrence
+	CutOff   []int  `json:"cut_off,omitempty"` // narratives that stop in mid-sentence
 	Rulebook string `json:"rulebook"`
 	Tags     []Tag  `json:"tags"`
 	Chain    Chain  `json:"chain"`

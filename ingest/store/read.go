@@ -140,7 +140,7 @@ func newParts(ctx context.Context, tx *sql.Tx) (*parts, error) {
 		query string
 	}{
 		{&p.narratives, "SELECT kind, text FROM narrative WHERE occurrence = ? ORDER BY key"},
-		{&p.tags, `SELECT factor, assertion, basis, narrative, start, "end", rule, strength, side, actor, quantity FROM tag WHERE occurrence = ? ORDER BY n`},
+		{&p.tags, `SELECT factor, assertion, basis, narrative, start, "end", rule, strength, side, actor, quantity, rule_hash FROM tag WHERE occurrence = ? ORDER BY n`},
 		{&p.chain, "SELECT outcome, broken_by, links FROM chain WHERE occurrence = ?"},
 	} {
 		st, err := tx.PrepareContext(ctx, s.query)
@@ -169,13 +169,14 @@ func (p *parts) read(ctx context.Context, r *Row) error {
 		r.Narratives = append(r.Narratives, n)
 		return err
 	})
+	r.CutOff = r.CutOffs()
 	if err != nil {
 		return err
 	}
 	err = each(ctx, p.tags, r.Key, func(rows *sql.Rows) error {
 		var t corpus.Tag
 		var quantity string
-		if err := rows.Scan(&t.Factor, &t.Assertion, &t.Basis, &t.Narrative, &t.Start, &t.End, &t.Rule, &t.Strength, &t.Side, &t.Actor, &quantity); err != nil {
+		if err := rows.Scan(&t.Factor, &t.Assertion, &t.Basis, &t.Narrative, &t.Start, &t.End, &t.Rule, &t.Strength, &t.Side, &t.Actor, &quantity, &t.RuleHash); err != nil {
 			return err
 		}
 		if t.Narrative < 0 || t.Narrative >= len(r.Narratives) {
@@ -306,12 +307,38 @@ func (s *Store) Known(ctx context.Context, source, id string, hash [sha256.Size]
 	return bytes.Equal(stored, hash[:]), nil
 }
 
+// Rulebooks reads what each known version of rule book and engine was made of.
+func (s *Store) Rulebooks(ctx context.Context) (map[string]map[string]string, error) {
+	out := map[string]map[string]string{}
+	rows, err := s.db.QueryContext(ctx, "SELECT version, parts FROM rulebook")
+	if err != nil {
+		return nil, fmt.Errorf("read rule books: %w", explain(err))
+	}
+	defer rows.Close()
+	for rows.Next() {
+		var version, data string
+		if err := rows.Scan(&version, &data); err != nil {
+			return nil, fmt.Errorf("read rule books: %w", explain(err))
+		}
+		var parts map[string]string
+		if err := json.Unmarshal([]byte(data), &parts); err != nil {
+			return nil, fmt.Errorf("read rule book %s: %w", version, err)
+		}
+		out[version] = parts
+	}
+	if err := rows.Err(); err != nil {
+		return nil, fmt.Errorf("read rule books: %w", explain(err))
+	}
+	return out, nil
+}
+
 // Counted is what a table needs of an occurrence: its fields without the
 // texts, and its affirmed factors.
 type Counted struct {
 	Key        int64
 	Occurrence corpus.Occurrence // narratives hold kinds, no text
 	Usable     bool
+	CutOff     bool     // a narrative stops in mid-sentence
 	Told       []string // factors with an affirmed tag whose basis is told
 	Inferred   []string // factors whose affirmed tags are inferred
 	Path       []string // factors of the chain, in order
@@ -321,7 +348,7 @@ type Counted struct {
 // Count streams what tables count, in the order of storing.
 func (s *Store) Count(ctx context.Context) iter.Seq2[*Counted, error] {
 	return func(yield func(*Counted, error) bool) {
-		rows, err := s.db.QueryContext(ctx, `SELECT o.key, o.kinds, o.usable, coalesce((SELECT group_concat(DISTINCT basis || ' ' || factor) FROM tag WHERE occurrence = o.key AND assertion = 'affirmed'), ''),
+		rows, err := s.db.QueryContext(ctx, `SELECT o.key, o.kinds, o.usable, o.cut_off, coalesce((SELECT group_concat(DISTINCT basis || ' ' || factor) FROM tag WHERE occurrence = o.key AND assertion = 'affirmed'), ''),
 			coalesce(c.links, '[]'), coalesce(c.broken_by, ''), `+fieldColumns+`
 			FROM occurrence o LEFT JOIN chain c ON c.occurrence = o.key ORDER BY o.key`)
 		if err != nil {
@@ -350,7 +377,7 @@ func scanCounted(rows *sql.Rows) (*Counted, error) {
 	o := &c.Occurrence
 	f := fields{o: o}
 	var kinds, factors, links string
-	if err := rows.Scan(append([]any{&c.Key, &kinds, &c.Usable, &factors, &links, &c.BrokenBy}, f.into()...)...); err != nil {
+	if err := rows.Scan(append([]any{&c.Key, &kinds, &c.Usable, &c.CutOff, &factors, &links, &c.BrokenBy}, f.into()...)...); err != nil {
 		return nil, err
 	}
 	if err := f.done(); err != nil {

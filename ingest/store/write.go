@@ -186,17 +186,17 @@ func (b *Batch) columns(p *Put, mapName string) []any {
 	o := &p.Occurrence
 	return []any{
 		o.Date.String(), o.Place, o.Country, o.Make, o.Model, o.Category, o.Engines, o.EngineType, o.Operation,
-		o.Phase, o.Injury, o.Damage, o.Event, rest, kinds(o), o.Usable(), p.Hash[:], b.file(p.File, mapName), p.Row, p.Line,
+		o.Phase, o.Injury, o.Damage, o.Event, rest, kinds(o), o.Usable(), o.CutOffs() != nil, p.Hash[:], b.file(p.File, mapName), p.Row, p.Line,
 		b.change, p.Rulebook, o.Source, o.ID,
 	}
 }
 
 const columnNames = `date, place, country, make, model, category, engines, engine_type, operation,
-	phase, injury, damage, event, rest, kinds, usable, hash, file, row, line, change, rulebook, source, id`
+	phase, injury, damage, event, rest, kinds, usable, cut_off, hash, file, row, line, change, rulebook, source, id`
 
 func (b *Batch) insert(p *Put, mapName string) int64 {
 	args := b.columns(p, mapName)
-	res := b.exec("INSERT INTO occurrence ("+columnNames+") VALUES (?"+strings.Repeat(", ?", 23)+")", args...)
+	res := b.exec("INSERT INTO occurrence ("+columnNames+") VALUES (?"+strings.Repeat(", ?", 24)+")", args...)
 	if b.err != nil {
 		return 0
 	}
@@ -225,7 +225,7 @@ func (b *Batch) revise(key int64, p *Put, mapName string) {
 		b.exec("DELETE FROM "+table+" WHERE occurrence = ?", key)
 	}
 	args := append(b.columns(p, mapName), key)
-	b.exec("UPDATE occurrence SET ("+columnNames+") = (?"+strings.Repeat(", ?", 23)+") WHERE key = ?", args...)
+	b.exec("UPDATE occurrence SET ("+columnNames+") = (?"+strings.Repeat(", ?", 24)+") WHERE key = ?", args...)
 }
 
 // maxNarratives is what the narrative key leaves room for.
@@ -258,8 +258,8 @@ func (b *Batch) tags(key int64, t *corpus.Tagged) {
 			}
 			quantity = string(data)
 		}
-		b.exec("INSERT INTO tag VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)", key, n, g.Factor, string(g.Assertion), string(g.Basis),
-			g.Narrative, g.Start, g.End, g.Rule, g.Strength, g.Side, g.Actor, quantity)
+		b.exec("INSERT INTO tag VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)", key, n, g.Factor, string(g.Assertion), string(g.Basis),
+			g.Narrative, g.Start, g.End, g.Rule, g.Strength, g.Side, g.Actor, quantity, g.RuleHash)
 	}
 	links, err := json.Marshal(t.Chain.Links)
 	if err != nil {
@@ -276,6 +276,24 @@ func (b *Batch) Retag(key int64, t *corpus.Tagged) error {
 	b.exec("DELETE FROM chain WHERE occurrence = ?", key)
 	b.tags(key, t)
 	b.exec("UPDATE occurrence SET rulebook = ? WHERE key = ?", t.Rulebook, key)
+	return b.err
+}
+
+// Untouched marks the tags of an occurrence as those that the rule book of a
+// version makes, without making them anew.
+func (b *Batch) Untouched(key int64, rulebook string) error {
+	b.exec("UPDATE occurrence SET rulebook = ? WHERE key = ?", rulebook, key)
+	return b.err
+}
+
+// Rulebook keeps what a version of rule book and engine is made of (see
+// classify.Classifier.Parts), in the transaction of the tags that it makes.
+func (b *Batch) Rulebook(version string, parts map[string]string) error {
+	data, err := json.Marshal(parts)
+	if err != nil {
+		return fmt.Errorf("write rule book: %w", err)
+	}
+	b.exec("INSERT INTO rulebook VALUES (?, ?) ON CONFLICT DO NOTHING", version, string(data))
 	return b.err
 }
 
