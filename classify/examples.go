@@ -36,14 +36,14 @@ func (c *Classifier) example(r *rulebook.Rule, e rulebook.Example) string {
 			}
 		})
 	}
-	if r.DeadSide {
-		all := c.narrative(d, "", true)
+	if r.DeadSide || r.LiveSide {
+		all := c.narrative(d, "", c.frame(&corpus.Occurrence{}, d))
 		hits = slices.DeleteFunc(hits, func(h hit) bool {
 			return !slices.ContainsFunc(all, func(o hit) bool { return o.rule == r && o.Span == h.Span })
 		})
 	}
 	if len(r.After) > 0 {
-		others := slices.DeleteFunc(c.narrative(d, "", true), func(h hit) bool { return h.rule == r })
+		others := slices.DeleteFunc(c.narrative(d, "", c.frame(&corpus.Occurrence{}, d)), func(h hit) bool { return h.rule == r })
 		hits = slices.DeleteFunc(hits, func(h hit) bool {
 			return !slices.ContainsFunc(others, func(o hit) bool {
 				f, _ := c.book.Tree.Factor(o.Factor)

@@ -27,7 +27,7 @@ func (c *Classifier) Explain(o *corpus.Occurrence, factor string) []Reason {
 		d := c.book.Lexicon.Analyse(narrative.Text)
 		kept := map[string]bool{}
 		key := func(r *rulebook.Rule, s corpus.Span) string { return r.ID + s.Of(d.Text) + string(rune(s.Start)) }
-		for _, h := range c.narrative(d, narrative.Kind, twin(o)) {
+		for _, h := range c.narrative(d, narrative.Kind, c.frame(o, d)) {
 			if factor != "" && !c.book.Tree.Implies(h.Factor, factor) {
 				continue
 			}
@@ -48,8 +48,8 @@ func (c *Classifier) Explain(o *corpus.Occurrence, factor string) []Reason {
 				case why != "":
 				case !reads(r, narrative.Kind):
 					why = "the rule does not read this kind of narrative (only in)"
-				case r.DeadSide:
-					why = "it is not known to be on the side of an engine that failed before, or the factor is told"
+				case r.DeadSide || r.LiveSide:
+					why = "its side is not known to stand so to an engine that failed before, or the factor is told (on the dead side, on the live side)"
 				case len(r.After) > 0:
 					why = "nothing that it could come after is affirmed before it (only after), or a stronger tag covers it"
 				default:

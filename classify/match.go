@@ -44,7 +44,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 	var told []telling
 	for n, narrative := range o.Narratives {
 		d := c.book.Lexicon.Analyse(narrative.Text)
-		hits := c.narrative(d, narrative.Kind, twin(o))
+		hits := c.narrative(d, narrative.Kind, c.frame(o, d))
 		for i := range hits {
 			hits[i].Narrative = n
 		}
@@ -58,7 +58,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 }
 
 // narrative finds the tags of one text, in order of place.
-func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
+func (c *Classifier) narrative(d *text.Doc, kind string, frame airframe) []hit {
 	var hits []hit
 	for n, s := range d.Sentences {
 		from := len(hits)
@@ -67,7 +67,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 				hits = append(hits, hit{
 					Tag: corpus.Tag{
 						Factor: r.Factor, Basis: basis(r), Span: m.Shown, Quote: m.Shown.Of(d.Text),
-						Rule: r.ID, RuleHash: r.Hash, Strength: r.Strength, Side: side(c.book.Lexicon, r, d, s, m),
+						Rule: r.ID, RuleHash: r.Hash, Strength: r.Strength, Side: frame.side(c.book.Lexicon, r, d, s, m),
 					},
 					sentence: n, match: m, rule: r,
 				})
@@ -88,8 +88,8 @@ func (c *Classifier) narrative(d *text.Doc, kind string, twin bool) []hit {
 	// what does not hold goes first, so that it cannot bear on anything else:
 	// see Touches
 	hits = c.inPlace(hits)
-	inherit(c.book.Lexicon, d, hits)
-	return c.quantities(d, onDeadSide(c.book, d, hits, twin), kind, twin)
+	frame.inherit(c.book.Lexicon, d, hits)
+	return c.quantities(d, onDeadSide(c.book, d, hits, frame), kind, frame.dead)
 }
 
 // reads tells whether a rule reads narratives of a kind.

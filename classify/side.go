@@ -1,16 +1,71 @@
 package classify
 
 import (
+	"slices"
+	"strings"
+
 	"catena/classify/rulebook"
 	"catena/classify/text"
+	"catena/ingest/corpus"
 )
 
+// airframe is what the side logic knows of an aircraft.
+type airframe struct {
+	engines int  // 0 where unknown
+	dead    bool // an engine that fails has, or may have, a dead side
+}
+
+// frame tells how the engines of an aircraft stand. The narrative's own words
+// come before the record's number of engines, which is often wrong in
+// published data. Engines on the centre line, rotors and gliders have no dead
+// side.
+func (c *Classifier) frame(o *corpus.Occurrence, d *text.Doc) airframe {
+	f := airframe{engines: o.Engines}
+	for _, s := range d.Sentences {
+		if rulebook.Stands(c.book.CentreLine, d, s) {
+			return airframe{engines: f.engines}
+		}
+	}
+	for n := 2; n <= 4; n++ {
+		look := c.book.EngineCount[n]
+		if slices.ContainsFunc(d.Sentences, func(s text.Sentence) bool { return rulebook.Stands(look, d, s) }) {
+			f.engines = n
+			break
+		}
+	}
+	category := strings.ToLower(o.Category)
+	f.dead = f.engines != 1 && !strings.HasPrefix(category, "heli") && !strings.HasPrefix(category, "rotor") && !strings.HasPrefix(category, "glid")
+	return f
+}
+
+// numbered gives the side of a numbered engine: No. 1 left and No. 2 right on
+// a twin, 1 and 2 left and 3 and 4 right with four engines, 1 left and 3 right
+// with three (common practice, no source).
+func (f airframe) numbered(name string) string {
+	switch name {
+	case "no1":
+		return "left"
+	case "no2":
+		switch f.engines {
+		case 3:
+			return ""
+		case 4:
+			return "left"
+		}
+		return "right"
+	case "no3":
+		if f.engines != 2 {
+			return "right"
+		}
+	case "no4":
+		return "right"
+	}
+	return ""
+}
+
 // side reads left or right off the words of a match and the few words around
-// it, within the clause; "" where neither or both are told. No. 1 is left and
-// No. 2 right, which holds for a twin with engines on the wings (common
-// practice, no source); package rulebook's rules ask for a side only where an
-// engine or the rudder is meant.
-func side(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, s text.Sentence, m rulebook.Match) string {
+// it, within the clause; "" where neither or both are told.
+func (f airframe) side(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, s text.Sentence, m rulebook.Match) string {
 	if r.Side == "" {
 		return ""
 	}
@@ -25,22 +80,22 @@ func side(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, s text.Sentence, m r
 	if joined(lex, d, max(s.First, m.First-2*around), m.Last) {
 		return ""
 	}
-	if found := sideWithin(lex, r, d, m.First, m.Last); found != "" {
+	if found := f.sideWithin(lex, r, d, m.First, m.Last); found != "" {
 		return found
 	}
-	return sideWithin(lex, r, d, from, to)
+	return f.sideWithin(lex, r, d, from, to)
 }
 
 // inherit gives the side of the engine to the hits around which none is told,
 // where the narrative speaks of one engine's side only.
-func inherit(lex *text.Lexicon, d *text.Doc, hits []hit) {
+func (f airframe) inherit(lex *text.Lexicon, d *text.Doc, hits []hit) {
 	only := ""
 	for i := range d.Tokens {
 		if !engineWords[lex.Name(d.Tokens[i].Word)] {
 			continue
 		}
 		for k := i; k >= max(0, i-4) && d.Tokens[k].Break != text.Stop; k-- {
-			switch here := sideName(lex, d.Tokens[k].Word); {
+			switch here := f.sideName(lex, d.Tokens[k].Word); {
 			case here == "":
 			case only != "" && only != here:
 				return // both sides are spoken of
@@ -58,15 +113,16 @@ func inherit(lex *text.Lexicon, d *text.Doc, hits []hit) {
 
 var engineWords = map[string]bool{"engine": true, "motor": true, "engine's": true, "propeller": true, "throttle": true, "powerplant": true}
 
-// sideName reads left or right, for an engine also No. 1 and No. 2.
-func sideName(lex *text.Lexicon, w text.Word) string {
-	switch lex.Name(w) {
-	case "left", "no1":
+// sideName reads left or right, or the side of a numbered engine.
+func (f airframe) sideName(lex *text.Lexicon, w text.Word) string {
+	switch name := lex.Name(w); name {
+	case "left", "port":
 		return "left"
-	case "right", "no2":
+	case "right", "starboard":
 		return "right"
+	default:
+		return f.numbered(name)
 	}
-	return ""
 }
 
 // joined tells whether "and" or "or" stands between left and right, as in
@@ -87,25 +143,11 @@ func joined(lex *text.Lexicon, d *text.Doc, from, to int) bool {
 	return false
 }
 
-func sideWithin(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, from, to int) string {
+func (f airframe) sideWithin(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, from, to int) string {
 	found := ""
 	for i := from; i < to; i++ {
-		here := ""
-		switch lex.Name(d.Tokens[i].Word) {
-		case "left":
-			here = "left"
-		case "right":
-			here = "right"
-		case "no1":
-			if r.Side == "engine" {
-				here = "left"
-			}
-		case "no2":
-			if r.Side == "engine" {
-				here = "right"
-			}
-		}
-		if here == "" {
+		here := f.sideName(lex, d.Tokens[i].Word)
+		if numbered := strings.HasPrefix(lex.Name(d.Tokens[i].Word), "no"); here == "" || numbered && r.Side != "engine" && r.Side != "lever" {
 			continue
 		}
 		if found != "" && found != here {

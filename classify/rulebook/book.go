@@ -43,6 +43,8 @@ type Book struct {
 	Actors      []Actor             // words for those who act
 	Retelling   []*Pattern          // words of a sentence from which the event is told a second time
 	InBrief     []*Pattern          // words of an opening sentence that tells it in brief
+	CentreLine  []*Pattern          // words for engines on the centre line, which have no dead side
+	EngineCount map[int][]*Pattern  // words for an aircraft with 2, 3 or 4 engines
 	LandingRoll []*Pattern          // words of a landing roll, where an engine has no dead side
 
 	rules  index[*Rule]
@@ -59,9 +61,10 @@ type Rule struct {
 	Says     string // what it means that this rule found something
 	Hash     string // of the rule with every term that it uses
 	Strength float64
-	Side     string   // "engine", "rudder" or "motion": whose side the words around tell
+	Side     string   // whose side the words around tell: that of the dead "engine", of a "lever" or system, of "rudder" or "motion"
 	Kinds    []string // kinds of narrative that it reads; none for all
 	DeadSide bool     // holds only on the side of an engine that failed before, and is inferred
+	LiveSide bool     // holds only on the other side
 	Look     []*Pattern
 	With     []*Pattern       // one of these must stand in the same sentence
 	Unless   []*Pattern       // none of these may stand in the same sentence
@@ -185,6 +188,10 @@ type fileYAML struct {
 	Always   []located            `yaml:"always"`
 	Usually  []located            `yaml:"in summaries"`
 	Landing  []located            `yaml:"landing roll"`
+	Centre   []located            `yaml:"engines on the centre line"`
+	Two      []located            `yaml:"two engines"`
+	Three    []located            `yaml:"three engines"`
+	Four     []located            `yaml:"four engines"`
 	Minimum  []located            `yaml:"minimum control speed is"`
 	Stall    []located            `yaml:"stall speed is"`
 	BlueLine []located            `yaml:"blue line is"`
@@ -202,6 +209,7 @@ type ruleYAML struct {
 	Strength  float64   `yaml:"strength"`
 	Side      string    `yaml:"side"`
 	DeadSide  bool      `yaml:"on the dead side"`
+	LiveSide  bool      `yaml:"on the live side"`
 	Kinds     []string  `yaml:"only in"`
 	Off       bool      `yaml:"off"`
 	Look      []located `yaml:"look for"`
@@ -362,7 +370,7 @@ func (l *loader) compile() {
 	b := l.book
 	b.Version = hex.EncodeToString(l.hash)[:12]
 	b.Limits = []Limit{{Kind: "vmc"}, {Kind: "stall"}, {Kind: "blue-line"}}
-	b.Measures = map[string][]string{}
+	b.Measures, b.EngineCount = map[string][]string{}, map[int][]*Pattern{}
 	c := &compiler{lexicon: b.Lexicon, terms: b.terms, used: map[string]bool{}}
 	ids := make([]string, 0, len(l.rules))
 	for id := range l.rules {
@@ -393,6 +401,10 @@ func (l *loader) compile() {
 		b.Retelling = append(b.Retelling, l.patterns(c, l.names[i], f.Retold)...)
 		b.SpeedFlown = append(b.SpeedFlown, l.patterns(c, l.names[i], f.Speed)...)
 		b.LandingRoll = append(b.LandingRoll, l.patterns(c, l.names[i], f.Landing)...)
+		b.CentreLine = append(b.CentreLine, l.patterns(c, l.names[i], f.Centre)...)
+		for n, from := range map[int][]located{2: f.Two, 3: f.Three, 4: f.Four} {
+			b.EngineCount[n] = append(b.EngineCount[n], l.patterns(c, l.names[i], from)...)
+		}
 	}
 	b.Common = l.commonHash(c.used)
 	// terms that no rule uses are compiled all the same, so that their faults show
@@ -502,7 +514,7 @@ func (l *loader) patterns(c *compiler, file string, sources []located) []*Patter
 
 func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	r := &Rule{
-		ID: id, DeadSide: y.DeadSide, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
+		ID: id, DeadSide: y.DeadSide, LiveSide: y.LiveSide, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
 		File: file, Line: y.Name.line, NotBy: y.NotBy,
 	}
 	for _, name := range y.NotBy {
@@ -513,11 +525,13 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	if r.Strength < 0 || r.Strength > 1 {
 		l.fault(file, r.Line, "rule %q: strength %g is not between 0 and 1", id, r.Strength)
 	}
-	if r.Side != "" && r.Side != "engine" && r.Side != "rudder" && r.Side != "motion" {
-		l.fault(file, r.Line, "rule %q: side %q: want engine, rudder or motion", id, r.Side)
+	switch r.Side {
+	case "", "engine", "lever", "rudder", "motion":
+	default:
+		l.fault(file, r.Line, "rule %q: side %q: want engine, lever, rudder or motion", id, r.Side)
 	}
-	if r.DeadSide && (r.Side == "" || r.Side == "engine") {
-		l.fault(file, r.Line, "rule %q: on the dead side wants side: rudder or motion", id)
+	if (r.DeadSide || r.LiveSide) && r.Side != "rudder" && r.Side != "motion" {
+		l.fault(file, r.Line, "rule %q: on the dead side, and on the live side, want side: rudder or motion", id)
 	}
 	clear(c.used)
 	for _, part := range []struct {
@@ -559,7 +573,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 // patterns and each term below them.
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
-	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.Kinds, y.NotBy)
+	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.LiveSide, y.Kinds, y.NotBy)
 	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
@@ -599,7 +613,7 @@ func (l *loader) commonHash(used map[string]bool) string {
 			fmt.Fprintf(h, "\n%s|%s|%s|%d", y.Sense, y.Within, y.Reach, y.Words)
 			texts("cue", y.Look)
 		}
-		for i, from := range [][]located{f.Order, f.Onward, f.Explains, f.Always, f.Usually, f.Landing, f.Minimum, f.Stall, f.BlueLine, f.Speed, f.Retold, f.InBrief} {
+		for i, from := range [][]located{f.Order, f.Onward, f.Explains, f.Always, f.Usually, f.Landing, f.Centre, f.Two, f.Three, f.Four, f.Minimum, f.Stall, f.BlueLine, f.Speed, f.Retold, f.InBrief} {
 			texts(fmt.Sprint(i), from)
 		}
 		for _, kind := range slices.Sorted(maps.Keys(f.Measures)) {
@@ -781,7 +795,7 @@ func (b *Book) mentions(name string) bool {
 			return true
 		}
 	}
-	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || has(b.Retelling) || has(b.InBrief) || has(b.SpeedFlown) ||
+	return has(b.Turns) || has(b.Onward) || has(b.Explains) || has(b.LandingRoll) || has(b.Retelling) || has(b.InBrief) || has(b.CentreLine) || has(b.SpeedFlown) ||
 		slices.ContainsFunc(b.Limits, func(x Limit) bool { return has(x.Look) }) ||
 		slices.ContainsFunc(b.Actors, func(x Actor) bool { return has(x.Look) }) ||
 		slices.ContainsFunc(b.Cues, func(x *Cue) bool { return has(x.Look) })

@@ -20,6 +20,7 @@ import (
 //	..  ..5     up to 3 (5) words, none beyond a comma
 //	...  ...9   up to 6 (9) words, commas or not
 //	#  *        a number; any one word
+//	####        a year
 //	[ ... ]     what to highlight, if not all of it
 //
 // A Pattern does not change after it is compiled and may be shared.
@@ -80,6 +81,7 @@ const (
 	gap
 	anyWord
 	number
+	year
 	markStart
 	markEnd
 )
@@ -221,8 +223,8 @@ func (m *matcher) run(elems []elem, i, begin int, free bool) (int, bool) {
 				return end, true
 			}
 		}
-	case anyWord, number:
-		if i < m.last && (free || m.d.Tokens[i].Break == text.NoBreak) && (e.kind == anyWord || m.d.Tokens[i].Number) {
+	case anyWord, number, year:
+		if i < m.last && (free || m.d.Tokens[i].Break == text.NoBreak) && e.takes(m.d, i) {
 			if end, ok := m.run(rest, i+1, begin, false); ok {
 				return end, true
 			}
@@ -232,6 +234,19 @@ func (m *matcher) run(elems []elem, i, begin int, free bool) (int, bool) {
 		return m.run(rest, i, begin, free)
 	}
 	return 0, false
+}
+
+// takes tells whether an element of one word that is not looked up takes a token.
+func (e *elem) takes(d *text.Doc, i int) bool {
+	t := d.Tokens[i]
+	switch e.kind {
+	case number:
+		return t.Number
+	case year:
+		w := d.Text[t.Start:t.End]
+		return t.Number && len(w) == 4 && (w[:2] == "19" || w[:2] == "20")
+	}
+	return true
 }
 
 // walk tries the phrases of a trie, the longest first. A phrase does not
@@ -356,7 +371,7 @@ func (c *compiler) variant(p *Pattern, items []string, seen map[text.Word]bool) 
 		switch e.kind {
 		case markStart, markEnd:
 			continue
-		case gap, anyWord, number:
+		case gap, anyWord, number, year:
 			return fmt.Errorf("pattern %q: begin with a word that must stand there, not with a gap", source)
 		}
 		for w := range e.trie.next {
@@ -384,6 +399,8 @@ func (c *compiler) elem(item string) (elem, error) {
 		return elem{kind: anyWord}, nil
 	case item == "#":
 		return elem{kind: number}, nil
+	case item == "####":
+		return elem{kind: year}, nil
 	case strings.HasPrefix(item, ".."):
 		dots := len(item) - len(strings.TrimLeft(item, "."))
 		e = elem{kind: gap, max: 3 * (dots - 1), cross: dots == 3}
