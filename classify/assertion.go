@@ -45,8 +45,8 @@ func (c *Classifier) cues(d *text.Doc, s text.Sentence) []cue {
 //
 // Where several cues reach, another flight outweighs advice, advice outweighs
 // a denial, and a denial outweighs a possibility. In a cause statement what
-// is offered as possible is the stated cause, and counts as affirmed. The
-// second result is the cue that decided, nil where none did.
+// is offered as possible is the stated cause, and counts as affirmed, unless
+// the cue holds there too ("the captain's assumption that ..."). The second result is the cue that decided, nil where none did.
 func assertion(d *text.Doc, cues []cue, m rulebook.Match, kind string) (corpus.Assertion, *cue) {
 	found, by := corpus.Affirmed, (*cue)(nil)
 	for i, q := range cues {
@@ -57,7 +57,7 @@ func assertion(d *text.Doc, cues []cue, m rulebook.Match, kind string) (corpus.A
 			found, by = a, &cues[i]
 		}
 	}
-	if found == corpus.Possible && kind == "cause" {
+	if found == corpus.Possible && kind == "cause" && !by.InCauses {
 		return corpus.Affirmed, nil
 	}
 	return found, by
@@ -92,7 +92,7 @@ func reaches(d *text.Doc, cues []cue, q cue, m rulebook.Match) bool {
 		}
 	}
 	for _, e := range cues {
-		if e.Sense == rulebook.End && e.first >= from && e.last <= to {
+		if e.Sense == rulebook.End && e.first >= from && e.first < to {
 			return false
 		}
 	}

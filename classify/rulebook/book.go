@@ -89,11 +89,12 @@ type Example struct {
 
 // Cue is words that tell how what stands near them is spoken of.
 type Cue struct {
-	Sense  Sense
-	Reach  Reach
-	Words  int  // how many words it reaches
-	Clause bool // its reach ends at a comma
-	Look   []*Pattern
+	Sense    Sense
+	Reach    Reach
+	Words    int  // how many words it reaches
+	Clause   bool // its reach ends at a comma
+	InCauses bool // of sense possible: holds in a cause statement too
+	Look     []*Pattern
 }
 
 // Sense is what a cue says of the factors in its reach.
@@ -231,6 +232,7 @@ type ruleYAML struct {
 type cueYAML struct {
 	Sense  Sense     `yaml:"sense"`
 	Within string    `yaml:"within"` // "clause" or nothing
+	Causes bool      `yaml:"also in causes"`
 	Reach  Reach     `yaml:"reach"`
 	Words  int       `yaml:"words"`
 	Look   []located `yaml:"look for"`
@@ -610,7 +612,7 @@ func (l *loader) commonHash(used map[string]bool) string {
 	}
 	for _, f := range l.cues {
 		for _, y := range f.Cues {
-			fmt.Fprintf(h, "\n%s|%s|%s|%d", y.Sense, y.Within, y.Reach, y.Words)
+			fmt.Fprintf(h, "\n%s|%s|%s|%d|%t", y.Sense, y.Within, y.Reach, y.Words, y.Causes)
 			texts("cue", y.Look)
 		}
 		for i, from := range [][]located{f.Order, f.Onward, f.Explains, f.Always, f.Usually, f.Landing, f.Centre, f.Two, f.Three, f.Four, f.Minimum, f.Stall, f.BlueLine, f.Speed, f.Retold, f.InBrief} {
@@ -659,7 +661,7 @@ func (l *loader) cue(c *compiler, file string, y cueYAML) *Cue {
 	if y.Within != "" && y.Within != "clause" {
 		l.fault(file, line, "cue: within %q: want clause, or leave it out", y.Within)
 	}
-	return &Cue{Sense: y.Sense, Reach: y.Reach, Words: cmp.Or(y.Words, 8), Clause: y.Within == "clause", Look: l.patterns(c, file, y.Look)}
+	return &Cue{Sense: y.Sense, Reach: y.Reach, Words: cmp.Or(y.Words, 8), Clause: y.Within == "clause", InCauses: y.Causes, Look: l.patterns(c, file, y.Look)}
 }
 
 // index finds, by the word at hand, the patterns that can begin with it.

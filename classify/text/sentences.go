@@ -81,7 +81,8 @@ func ends(s string, prev, next raw, gap string, caps bool) bool {
 	case neverEnds[lower] && strings.HasPrefix(gap, "."):
 		return false
 	case mayEnd[lower] && strings.HasPrefix(gap, "."):
-		return spaced && isUpper(s[next.start]) && (!caps || !mayEnd[strings.ToLower(s[next.start:next.end])])
+		// in capitals one abbreviation may follow another: "HDG. ALT. SPD."
+		return spaced && isUpper(s[next.start]) && (!caps || !mayEnd[strings.ToLower(s[next.start:next.end])] || !strings.HasPrefix(s[next.end:], "."))
 	case len(word) == 1 && prev.kind == letters:
 		// an initial, U.S., a.m.; in capitals "TURNED L. THEN" ends
 		return spaced && capital && (caps || strings.EqualFold(word, "i") || quoted)
