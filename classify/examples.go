@@ -32,7 +32,7 @@ func (c *Classifier) example(r *rulebook.Rule, e rulebook.Example) string {
 		c.book.FindRules(d, s, func(found *rulebook.Rule, m rulebook.Match) {
 			if found == r && c.holds(r, d, n, m) {
 				a, _ := assertion(d, cues, m, "")
-				hits = append(hits, hit{Tag: corpus.Tag{Span: m.Shown, Assertion: a}})
+				hits = append(hits, denials([]hit{{Tag: corpus.Tag{Span: m.Shown, Assertion: a}, rule: r}})...)
 			}
 		})
 	}

@@ -34,6 +34,8 @@ var goldSets = []struct {
 	{"written", []string{"cmd/catena/demo/written-a", "cmd/catena/demo/written-b", "cmd/catena/demo/written-c"}},
 	{"made", []string{"cmd/catena/demo/made"}},
 	{"traps", []string{"testdata/gold/traps"}},
+	{"words", []string{"testdata/gold/words"}},
+	{"assertion", []string{"testdata/gold/assertion"}},
 }
 
 // sheet is what is counted over a set of narratives.

@@ -80,6 +80,7 @@ func (c *Classifier) narrative(d *text.Doc, kind string, frame airframe) []hit {
 		for i := from; i < len(hits); i++ {
 			hits[i].Assertion, hits[i].cue = assertion(d, cues, hits[i].match, kind)
 		}
+		hits = append(hits[:from], denials(hits[from:])...)
 		hits = append(hits[:from], distinct(hits[from:])...)
 		for i := from; i < len(hits); i++ {
 			hits[i].Actor = c.doer(d, n, &hits[i])
@@ -90,6 +91,19 @@ func (c *Classifier) narrative(d *text.Doc, kind string, frame airframe) []hit {
 	hits = c.inPlace(hits)
 	frame.inherit(c.book.Lexicon, d, hits)
 	return c.quantities(d, onDeadSide(c.book, d, hits, frame), kind, frame.dead)
+}
+
+// denials gives the hits of rules whose words deny their factor that
+// assertion. Where a cue bears on such words ("was not running normally") they
+// say nothing.
+func denials(hits []hit) []hit {
+	kept := slices.DeleteFunc(hits, func(h hit) bool { return h.rule.Denies && h.Assertion != corpus.Affirmed })
+	for i := range kept {
+		if kept[i].rule.Denies {
+			kept[i].Assertion = corpus.Denied
+		}
+	}
+	return kept
 }
 
 // reads tells whether a rule reads narratives of a kind.

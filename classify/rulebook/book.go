@@ -65,6 +65,7 @@ type Rule struct {
 	Kinds    []string // kinds of narrative that it reads; none for all
 	DeadSide bool     // holds only on the side of an engine that failed before, and is inferred
 	LiveSide bool     // holds only on the other side
+	Denies   bool     // its words say that the factor did not happen ("the engine ran normally")
 	Look     []*Pattern
 	With     []*Pattern       // one of these must stand in the same sentence
 	Unless   []*Pattern       // none of these may stand in the same sentence
@@ -211,6 +212,7 @@ type ruleYAML struct {
 	Side      string    `yaml:"side"`
 	DeadSide  bool      `yaml:"on the dead side"`
 	LiveSide  bool      `yaml:"on the live side"`
+	Denies    bool      `yaml:"denies"`
 	Kinds     []string  `yaml:"only in"`
 	Off       bool      `yaml:"off"`
 	Look      []located `yaml:"look for"`
@@ -516,7 +518,7 @@ func (l *loader) patterns(c *compiler, file string, sources []located) []*Patter
 
 func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	r := &Rule{
-		ID: id, DeadSide: y.DeadSide, LiveSide: y.LiveSide, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
+		ID: id, DeadSide: y.DeadSide, LiveSide: y.LiveSide, Denies: y.Denies, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
 		File: file, Line: y.Name.line, NotBy: y.NotBy,
 	}
 	for _, name := range y.NotBy {
@@ -565,7 +567,10 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 			r.Examples = append(r.Examples, example(s, group.want, file))
 		}
 	}
-	if len(y.Match) == 0 {
+	switch {
+	case r.Denies && (len(y.Denied) == 0 || len(y.Match) > 0):
+		l.fault(file, r.Line, "rule %q denies its factor: its examples that must match stand under denied", id)
+	case !r.Denies && len(y.Match) == 0:
 		l.fault(file, r.Line, "rule %q has no example that must match (match: ...)", id)
 	}
 	return r
@@ -575,7 +580,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 // patterns and each term below them.
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
-	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.LiveSide, y.Kinds, y.NotBy)
+	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%t|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.LiveSide, y.Denies, y.Kinds, y.NotBy)
 	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
