@@ -29,7 +29,7 @@ var (
 )
 
 // format changes whenever documents would be indexed in another way.
-const format = 1
+const format = 2
 
 // Options say how to open an index.
 type Options struct {

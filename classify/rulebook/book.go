@@ -261,7 +261,7 @@ func Load(tree *catalogue.Tree, folders ...fs.FS) (*Book, error) {
 func load(tree *catalogue.Tree, folders ...fs.FS) (*Book, error) {
 	l := &loader{
 		book:  &Book{Tree: tree, Lexicon: text.NewLexicon(), terms: map[string]*term{}},
-		rules: map[string]*ruleYAML{}, files: map[string]string{}, hash: sha256.New().Sum(nil),
+		rules: map[string]*ruleYAML{}, files: map[string]string{}, hash: text.Spelling(),
 	}
 	for _, folder := range folders {
 		if err := l.read(folder); err != nil {
@@ -606,6 +606,7 @@ func (l *loader) hashTerms(h io.Writer, used map[string]bool) {
 // terms that they use.
 func (l *loader) commonHash(used map[string]bool) string {
 	h := sha256.New()
+	h.Write(text.Spelling())
 	texts := func(name string, from []located) {
 		if len(from) == 0 {
 			return // a further file without such a section changes nothing

@@ -16,13 +16,14 @@ type Word uint32
 // (Words, Add) before the first Analyse; after that it must not change, and
 // may be shared between goroutines.
 type Lexicon struct {
-	ids     map[string]Word
-	names   []string          // id -> word
-	spelled map[string][]Word // surface form -> words of the normal form
-	joined  map[[2]Word]Word  // two words that are written as one
-	numbers [5]Word           // no1 .. no4, at their index
-	opens   []bool            // by id: a surface form in spelled
-	pairs   []bool            // by id: the first word of a pair in joined
+	ids       map[string]Word
+	names     []string             // id -> word
+	spelled   map[string][]Word    // surface form -> words of the normal form
+	ambiguous map[string][]reading // surface form -> what it may stand for
+	joined    map[[2]Word]Word     // two words that are written as one
+	numbers   [5]Word              // no1 .. no4, at their index
+	opens     []bool               // by id: a surface form in spelled
+	pairs     []bool               // by id: the first word of a pair in joined
 
 	no, number, hash Word
 }
@@ -30,17 +31,21 @@ type Lexicon struct {
 //go:embed spelling.yaml
 var spelling []byte
 
+// Spelling is the embedded spelling table, for the version of what is built on it.
+func Spelling() []byte { return spelling }
+
 // NewLexicon returns a lexicon that holds the spelling table and no words
 // of rules yet.
 func NewLexicon() *Lexicon {
 	l := &Lexicon{
 		ids: map[string]Word{}, names: []string{""},
-		spelled: map[string][]Word{}, joined: map[[2]Word]Word{}, opens: []bool{false}, pairs: []bool{false},
+		spelled: map[string][]Word{}, ambiguous: map[string][]reading{}, joined: map[[2]Word]Word{}, opens: []bool{false}, pairs: []bool{false},
 	}
 	var table struct {
-		Joined   []string          `yaml:"joined"`
-		Variants map[string]string `yaml:"variants"`
-		Short    map[string]string `yaml:"short"`
+		Joined    []string             `yaml:"joined"`
+		Variants  map[string]string    `yaml:"variants"`
+		Short     map[string]string    `yaml:"short"`
+		Ambiguous map[string][]reading `yaml:"ambiguous"`
 	}
 	if err := yaml.UnmarshalWithOptions(spelling, &table, yaml.Strict()); err != nil {
 		panic(fmt.Sprintf("the embedded spelling table is broken: %v", err)) // a test loads it
@@ -66,6 +71,20 @@ func NewLexicon() *Lexicon {
 			l.spelled[from] = words
 			l.opens[l.intern(from)] = true
 		}
+	}
+	for from, readings := range table.Ambiguous {
+		for i := range readings {
+			r := &readings[i]
+			for _, w := range strings.Fields(r.Means) {
+				r.words = append(r.words, l.intern(w))
+			}
+			r.beside = map[string]bool{}
+			for _, w := range r.Beside {
+				r.beside[w] = true
+			}
+		}
+		l.ambiguous[from] = readings
+		l.opens[l.intern(from)] = true
 	}
 	return l
 }

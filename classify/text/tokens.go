@@ -145,6 +145,11 @@ func appendRaw(out []raw, s string) []raw {
 					break
 				}
 			}
+			if i-start == 1 && slashed(s, start) {
+				i = start + 3 // F/O, T/O, C/L
+				out = append(out, raw{start, i, i, letters})
+				continue
+			}
 			out = append(out, contraction(s, start, i)...)
 		case s[i] == '#' && i+1 < len(s) && isDigit(s[i+1]):
 			out = append(out, raw{i, i + 1, i + 1, hash})
@@ -154,6 +159,12 @@ func appendRaw(out []raw, s string) []raw {
 		}
 	}
 	return out
+}
+
+// slashed tells whether two single letters with a stroke between them stand at i.
+func slashed(s string, i int) bool {
+	letter := func(i int) bool { return i >= 0 && i < len(s) && (isUpper(s[i]) || isLower(s[i])) }
+	return letter(i) && i+2 < len(s) && s[i+1] == '/' && letter(i+2) && !letter(i+3) && (i+3 >= len(s) || !isDigit(s[i+3]) && s[i+3] != '/')
 }
 
 // digitsEnd finds the end of a number: 71, 1,200, 2.5.
@@ -234,8 +245,22 @@ func (l *Lexicon) Analyse(s string) *Doc {
 				key[j] = c
 			}
 			w, known := l.ids[string(key)]
+			stands := []Word(nil)
 			if known && l.opens[w] {
-				for k, w := range l.spelled[string(key)] {
+				if stands = l.spelled[string(key)]; stands == nil {
+					stands = decide(l.ambiguous[string(key)], s, raws, i)
+				}
+			} else if !known && r.kind == letters {
+				if w, known = l.repair(string(key)); !known && i > 0 && n > 1 {
+					p := &d.Tokens[len(d.Tokens)-1]
+					if whole, ok := l.brokenLine(s, raws[i-1], r); ok && p.Start == raws[i-1].start {
+						p.Word, p.End = whole, r.after
+						continue
+					}
+				}
+			}
+			if stands != nil {
+				for k, w := range stands {
 					t.Word = w
 					if k > 0 {
 						t.Break = NoBreak
