@@ -136,3 +136,39 @@ func (t *Tree) Below(id string) []string {
 	}
 	return ids
 }
+
+// Categories lists the CICTT occurrence categories that the factors of an
+// occurrence speak for, in order of the alphabet. More than one is usual: an
+// engine failure after which control is lost is SCF-PP and LOC-I. By the
+// coding rules (CAST/ICAO Common Taxonomy Team, Aviation Occurrence Categories
+// 4.7, December 2017, and the rules of 4.1 and 4.2) a loss of power that comes
+// from the fuel is FUEL and not SCF-PP, and contact with the runway after
+// control was lost in flight is not ARC. What is lost on purpose, and what a
+// narrative does not tell, has no category here.
+func (t *Tree) Categories(factors []string) []string {
+	has := func(id string) bool {
+		return slices.ContainsFunc(factors, func(f string) bool { return t.Implies(f, id) })
+	}
+	var out []string
+	for _, id := range factors {
+		f, ok := t.Factor(id)
+		if !ok {
+			continue
+		}
+		for _, code := range f.Category {
+			switch {
+			case code == "FUEL" && !has("fuel-problem"),
+				code == "SCF-PP" && t.Implies(id, "power-loss") && has("fuel-problem"),
+				code == "ARC" && has("control-lost-in-flight"),
+				id == "directional-control-lost" && code == "LOC-I" && !has("control-lost-in-flight"),
+				id == "directional-control-lost" && code == "LOC-G" && !has("control-lost-on-ground"),
+				code == "F-POST" && !has("terrain-impact"), code == "F-NI" && has("terrain-impact"),
+				slices.Contains(out, code):
+			default:
+				out = append(out, code)
+			}
+		}
+	}
+	slices.Sort(out)
+	return out
+}

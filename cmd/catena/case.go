@@ -87,6 +87,7 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 		t := r.Tags[l.Tag]
 		fmt.Fprintf(out, "  %d. %s%s\n     %s\n     (%s, rule %s, strength %.2f)\n", i+1, l.Factor, linkWords(l, t), strings.TrimSpace(sentence(t)), kindOf(l.Factor), t.Rule, t.Strength)
 	}
+	printCategories(out, r)
 	printBalance(out, r)
 	if r.Chain.BrokenBy != "" {
 		fmt.Fprintf(out, "  broken by: %s\n", r.Chain.BrokenBy)
@@ -109,6 +110,17 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 		fmt.Fprintf(out, "\nNarrative %d (%s):\n%s\n", n+1, clean(t.Kind), table.Wrap(clean(t.Text), width(out), ""))
 	}
 	fmt.Fprintf(out, "\nThis is what the report tells, not a finding of cause. The investigating authority,\nthe aircraft flight manual, local regulations and licensed instructors come first.\n")
+}
+
+// printCategories names the occurrence categories that the chain speaks for.
+func printCategories(out io.Writer, r *store.Row) {
+	var factors []string
+	for _, l := range r.Chain.Links {
+		factors = append(factors, l.Factor)
+	}
+	if codes := catalogue.Builtin().Categories(factors); len(codes) > 0 {
+		fmt.Fprintf(out, "  occurrence categories that these speak for (CICTT): %s\n", strings.Join(codes, ", "))
+	}
 }
 
 // printBalance tells, where a speed flown under the minimum control speed is
