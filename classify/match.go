@@ -150,7 +150,9 @@ func (c *Classifier) refused(r *rulebook.Rule, d *text.Doc, n int, m rulebook.Ma
 		return "words that the rule excludes stand in the same sentence (unless)"
 	case len(r.With) > 0 && !rulebook.Stands(r.With, d, s):
 		return "words that the rule wants in the same sentence are missing (with)"
-	case len(r.Near) > 0 && !c.near(r, d, n):
+	case len(r.NotNear) > 0 && near(r.NotNear, d, n):
+		return "words that the rule excludes stand in this or a neighbouring sentence (not near)"
+	case len(r.Near) > 0 && !near(r.Near, d, n):
 		return "words that the rule wants in this or a neighbouring sentence are missing (near)"
 	case len(r.NotBy) > 0 && slices.Contains(r.NotBy, c.actor(d, n, m)):
 		return "it is the deed of somebody whom the rule leaves out (not by)"
@@ -160,9 +162,10 @@ func (c *Classifier) refused(r *rulebook.Rule, d *text.Doc, n int, m rulebook.Ma
 	return ""
 }
 
-func (c *Classifier) near(r *rulebook.Rule, d *text.Doc, n int) bool {
+// near tells whether one of the patterns stands in sentence n or beside it.
+func near(patterns []*rulebook.Pattern, d *text.Doc, n int) bool {
 	for k := max(0, n-1); k <= min(n+1, len(d.Sentences)-1); k++ {
-		if rulebook.Stands(r.Near, d, d.Sentences[k]) {
+		if rulebook.Stands(patterns, d, d.Sentences[k]) {
 			return true
 		}
 	}

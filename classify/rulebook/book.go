@@ -70,6 +70,7 @@ type Rule struct {
 	With     []*Pattern       // one of these must stand in the same sentence
 	Unless   []*Pattern       // none of these may stand in the same sentence
 	Near     []*Pattern       // one of these must stand in the same or a neighbouring sentence
+	NotNear  []*Pattern       // none of these may stand in the same or a neighbouring sentence
 	Nowhere  []*Pattern       // none of these may stand anywhere in the narrative
 	PartOf   []*Pattern       // the match may not overlap one of these
 	NotBy    []string         // actors whose deed it is not
@@ -219,6 +220,7 @@ type ruleYAML struct {
 	With      []located `yaml:"with"`
 	Unless    []located `yaml:"unless"`
 	Near      []located `yaml:"near"`
+	NotNear   []located `yaml:"not near"`
 	Nowhere   []located `yaml:"nowhere"`
 	PartOf    []located `yaml:"not part of"`
 	NotBy     []string  `yaml:"not by"`
@@ -541,7 +543,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	for _, part := range []struct {
 		into *[]*Pattern
 		from []located
-	}{{&r.Look, y.Look}, {&r.With, y.With}, {&r.Unless, y.Unless}, {&r.Near, y.Near}, {&r.Nowhere, y.Nowhere}, {&r.PartOf, y.PartOf}} {
+	}{{&r.Look, y.Look}, {&r.With, y.With}, {&r.Unless, y.Unless}, {&r.Near, y.Near}, {&r.NotNear, y.NotNear}, {&r.Nowhere, y.Nowhere}, {&r.PartOf, y.PartOf}} {
 		*part.into = l.patterns(c, file, part.from)
 	}
 	for _, kind := range y.After {
@@ -581,7 +583,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
 	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%t|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.LiveSide, y.Denies, y.Kinds, y.NotBy)
-	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.Nowhere, y.PartOf} {
+	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.NotNear, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
 			fmt.Fprint(h, "\n", s.text)
@@ -799,7 +801,7 @@ func (b *Book) mentions(name string) bool {
 		return slices.ContainsFunc(ps, func(p *Pattern) bool { return strings.Contains(p.Source, "{"+name+"}") })
 	}
 	for _, r := range b.Rules {
-		if has(r.Look) || has(r.With) || has(r.Unless) || has(r.Near) || has(r.Nowhere) || has(r.PartOf) {
+		if has(r.Look) || has(r.With) || has(r.Unless) || has(r.Near) || has(r.NotNear) || has(r.Nowhere) || has(r.PartOf) {
 			return true
 		}
 	}

@@ -96,7 +96,7 @@ func showRules(cmd *cobra.Command, folder, id string) error {
 		for _, part := range []struct {
 			name     string
 			patterns []*rulebook.Pattern
-		}{{"looks for", r.Look}, {"with, in the sentence", r.With}, {"near, in a sentence beside it", r.Near}, {"unless, in the sentence", r.Unless}, {"unless, anywhere", r.Nowhere}} {
+		}{{"looks for", r.Look}, {"with, in the sentence", r.With}, {"near, in a sentence beside it", r.Near}, {"unless, in the sentence", r.Unless}, {"unless, in a sentence beside it", r.NotNear}, {"unless, anywhere", r.Nowhere}} {
 			for i, p := range part.patterns {
 				if i == 0 {
 					fmt.Fprintf(out, "  %s:\n", part.name)
