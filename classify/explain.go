@@ -1,6 +1,8 @@
 package classify
 
 import (
+	"fmt"
+
 	"catena/classify/rulebook"
 	"catena/ingest/corpus"
 )
@@ -14,8 +16,11 @@ type Reason struct {
 	Assertion   corpus.Assertion
 	Basis       corpus.Basis
 	Side        string
-	Cue         corpus.Span // the words that decided the assertion; empty where none did
-	Refused     string      // why no tag was made; "" where one was
+	Actor       string
+	Strength    float64          // 0 where no tag was made
+	Quantity    *corpus.Quantity // nil where none
+	Cue         corpus.Span      // the words that decided the assertion; empty where none did
+	Refused     string           // why no tag was made; "" where one was
 }
 
 // Explain goes through an occurrence as Tag does and tells, in order of place,
@@ -23,6 +28,13 @@ type Reason struct {
 // tells of that factor and those below it only.
 func (c *Classifier) Explain(o *corpus.Occurrence, factor string) []Reason {
 	var out []Reason
+	strength := map[string]float64{}
+	place := func(n int, rule string, s corpus.Span) string {
+		return fmt.Sprintf("%d %s %d %d", n, rule, s.Start, s.End)
+	}
+	for _, t := range c.Tag(o).Tags {
+		strength[place(t.Narrative, t.Rule, t.Span)] = t.Strength
+	}
 	for n, narrative := range o.Narratives {
 		d := c.book.Lexicon.Analyse(narrative.Text)
 		kept := map[string]bool{}
@@ -32,7 +44,7 @@ func (c *Classifier) Explain(o *corpus.Occurrence, factor string) []Reason {
 				continue
 			}
 			kept[key(h.rule, h.Span)] = true
-			r := Reason{Rule: h.rule, Narrative: n, Span: h.Span, Sentence: d.Sentences[h.sentence].Span, Assertion: h.Assertion, Basis: h.Basis, Side: h.Side}
+			r := Reason{Rule: h.rule, Narrative: n, Span: h.Span, Sentence: d.Sentences[h.sentence].Span, Assertion: h.Assertion, Basis: h.Basis, Side: h.Side, Actor: h.Actor, Strength: strength[place(n, h.Rule, h.Span)], Quantity: h.Quantity}
 			if h.cue != nil {
 				r.Cue = corpus.Span{Start: d.Tokens[h.cue.first].Start, End: d.Tokens[h.cue.last-1].End}
 			}

@@ -44,7 +44,14 @@ type sheet struct {
 	spoken  map[[2]corpus.Assertion]int // coded and found assertion of words that both show; "" where nothing is found
 	sides   [2]int                      // right, all where both tell a side
 	order   [2]int                      // pairs of links in the right order, all whose factors were both found
+	sure    map[string][2]int           // by strength: right, all of the affirmed tags
 }
+
+// bands of strength, from below.
+var bands = []struct {
+	name string
+	from float64
+}{{"under 0.80", 0}, {"0.80 to 0.89", 0.8}, {"0.90 and more", 0.9}}
 
 var assertions = []corpus.Assertion{corpus.Affirmed, corpus.Denied, corpus.Possible, corpus.Advised, corpus.Elsewhere}
 
@@ -68,14 +75,20 @@ func (s score) String() string {
 func TestGoldTable(t *testing.T) {
 	c := classifier(t)
 	var b strings.Builder
+	var sure [2]int // right, all of the affirmed tags in the highest band of strength
 	for _, set := range goldSets {
-		s := sheet{factors: map[string]*score{}, spoken: map[[2]corpus.Assertion]int{}}
+		s := sheet{factors: map[string]*score{}, spoken: map[[2]corpus.Assertion]int{}, sure: map[string][2]int{}}
 		n := 0
 		for _, file := range set.files {
 			n += s.read(t, c, filepath.Join("..", filepath.FromSlash(file)))
 		}
 		fmt.Fprintf(&b, "== %s: %d narratives\n", set.name, n)
 		s.print(&b, c)
+		top := s.sure[bands[len(bands)-1].name]
+		sure[0], sure[1] = sure[0]+top[0], sure[1]+top[1]
+	}
+	if right, all := sure[0], sure[1]; 10*right < 9*all || all < 100 {
+		t.Errorf("of %d affirmed tags at a strength of 0.9 or more %d are right: want nine in ten", all, right)
 	}
 	golden := filepath.Join("testdata", "gold.txt")
 	if *update {
@@ -111,6 +124,9 @@ func (s *sheet) print(b *strings.Builder, c *Classifier) {
 		for _, a := range found {
 			fmt.Fprintf(b, " %10d", s.spoken[[2]corpus.Assertion{coded, a}])
 		}
+	}
+	for _, band := range bands {
+		fmt.Fprintf(b, "\nstrength %-13s %3d of %3d affirmed tags right", band.name, s.sure[band.name][0], s.sure[band.name][1])
 	}
 	fmt.Fprintf(b, "\nsides right %d of %d, pairs in order %d of %d\n\n", s.sides[0], s.sides[1], s.order[0], s.order[1])
 }
@@ -157,6 +173,9 @@ func (s *sheet) add(c *Classifier, o *corpus.Occurrence, x truth) {
 	}
 	tagged := c.Tag(o)
 	for _, tag := range tagged.Tags {
+		if tag.Assertion == corpus.Affirmed {
+			s.rate(tag, coded[tag.Factor] || implied[tag.Factor])
+		}
 		if tag.Assertion == corpus.Affirmed && tag.Basis == corpus.Told {
 			for _, f := range c.book.Tree.Lineage(tag.Factor) {
 				found[f] = true
@@ -183,6 +202,22 @@ func (s *sheet) add(c *Classifier, o *corpus.Occurrence, x truth) {
 		s.compare(c, g, tagged.Tags)
 	}
 	s.pairs(c, x.Sequence, tagged.Chain)
+}
+
+// rate counts a tag in its band of strength.
+func (s *sheet) rate(tag corpus.Tag, right bool) {
+	name := ""
+	for _, band := range bands {
+		if tag.Strength >= band.from {
+			name = band.name
+		}
+	}
+	x := s.sure[name]
+	x[1]++
+	if right {
+		x[0]++
+	}
+	s.sure[name] = x
 }
 
 // compare looks for tags on the coded words, of the coded factor or one of

@@ -54,6 +54,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 		}
 	}
 	out.Chain = c.chain(out.Tags, told)
+	c.strengths(out.Tags, o.Narratives)
 	return out
 }
 

@@ -42,6 +42,7 @@ type Book struct {
 	Measures    map[string][]string // factor -> kinds of measure that belong to it
 	Actors      []Actor             // words for those who act
 	Retelling   []*Pattern          // words of a sentence from which the event is told a second time
+	Calibration Calibration         // how sure a tag is
 	InBrief     []*Pattern          // words of an opening sentence that tells it in brief
 	CentreLine  []*Pattern          // words for engines on the centre line, which have no dead side
 	EngineCount map[int][]*Pattern  // words for an aircraft with 2, 3 or 4 engines
@@ -118,6 +119,20 @@ const (
 	Backward Reach = "backward"
 	Whole    Reach = "sentence"
 )
+
+// Calibration turns what is known of a tag into the probability that it is
+// right: the logistic function of the sum of the values that hold for it,
+// between Least and Most.
+type Calibration struct {
+	Base     float64            `yaml:"base"`
+	Written  float64            `yaml:"written"`  // times logit(strength written in the rule) - logit(0.9)
+	Cause    float64            `yaml:"cause"`    // told in a cause statement
+	Remarks  float64            `yaml:"remarks"`  // told in short remarks
+	Repeated float64            `yaml:"repeated"` // affirmed more than once in the occurrence
+	Least    float64            `yaml:"least"`
+	Most     float64            `yaml:"most"`
+	Rules    map[string]float64 `yaml:"rules"` // by id; 0 for a rule that is not named
+}
 
 // Limit is a named speed and the patterns that show its number.
 type Limit struct {
@@ -203,6 +218,7 @@ type fileYAML struct {
 	Actors   map[string][]located `yaml:"actors"`
 	Retold   []located            `yaml:"told again"`
 	InBrief  []located            `yaml:"told in brief"`
+	Strength *Calibration         `yaml:"calibration"`
 }
 
 type ruleYAML struct {
@@ -390,6 +406,9 @@ func (l *loader) compile() {
 	}
 	clear(c.used)
 	for i, f := range l.cues {
+		if f.Strength != nil {
+			b.Calibration = *f.Strength
+		}
 		for _, y := range f.Cues {
 			b.Cues = append(b.Cues, l.cue(c, l.names[i], y))
 		}
@@ -619,6 +638,9 @@ func (l *loader) commonHash(used map[string]bool) string {
 		}
 	}
 	for _, f := range l.cues {
+		if f.Strength != nil {
+			fmt.Fprintf(h, "\n%+v", *f.Strength) // maps are printed in order of their keys
+		}
 		for _, y := range f.Cues {
 			fmt.Fprintf(h, "\n%s|%s|%s|%d|%t", y.Sense, y.Within, y.Reach, y.Words, y.Causes)
 			texts("cue", y.Look)

@@ -73,11 +73,22 @@ func printReasons(cmd *cobra.Command, r *store.Row, reasons []classify.Reason, f
 			if x.Side != "" {
 				fmt.Fprintf(out, ", %s", x.Side)
 			}
+			if x.Actor != "" {
+				fmt.Fprintf(out, ", by the %s", x.Actor)
+			}
+			if q := x.Quantity; q != nil {
+				fmt.Fprintf(out, ", %s %.4g %s", q.Kind, q.Value, q.Unit)
+			}
+			fmt.Fprintf(out, ", strength %.2f", x.Strength)
 		} else {
 			fmt.Fprint(out, ", not tagged")
 		}
 		fmt.Fprintf(out, "\n  %s [%s] %s\n", clean(strings.TrimSpace(text[x.Sentence.Start:x.Start])), clean(x.Of(text)), clean(strings.TrimSpace(text[x.End:x.Sentence.End])))
-		fmt.Fprintf(out, "  rule %s (%s:%d, strength %.2f): %s\n", x.Rule.ID, x.Rule.File, x.Rule.Line, x.Rule.Strength, x.Rule.Says)
+		at := x.Rule.File
+		if x.Rule.Line > 0 {
+			at += fmt.Sprintf(":%d", x.Rule.Line)
+		}
+		fmt.Fprintf(out, "  rule %s (%s): %s\n", x.Rule.ID, at, x.Rule.Says)
 		switch {
 		case x.Refused != "":
 			fmt.Fprintf(out, "  %s\n", x.Refused)
