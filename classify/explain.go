@@ -73,3 +73,37 @@ func (c *Classifier) Explain(o *corpus.Occurrence, factor string) []Reason {
 	}
 	return out
 }
+
+// Miss is the sentence that comes nearest to a rule that did not match.
+type Miss struct {
+	Rule      *rulebook.Rule
+	Pattern   *rulebook.Pattern
+	Narrative int
+	Sentence  corpus.Span
+	Present   int // parts of the pattern that the sentence has words for
+	All       int
+}
+
+// NearestMiss finds, for a factor or those below it, the sentence and pattern
+// that come nearest to each other. It reports false where no sentence has
+// words for half of any pattern.
+func (c *Classifier) NearestMiss(o *corpus.Occurrence, factor string) (Miss, bool) {
+	var best Miss
+	for n, narrative := range o.Narratives {
+		d := c.book.Lexicon.Analyse(narrative.Text)
+		for _, s := range d.Sentences {
+			for _, r := range c.book.Rules {
+				if !c.book.Tree.Implies(r.Factor, factor) || r.Denies {
+					continue
+				}
+				for _, p := range r.Look {
+					present, all := p.Parts(d, s)
+					if all > 1 && 2*present >= all && (best.Rule == nil || present*best.All > best.Present*all || present*best.All == best.Present*all && present > best.Present) {
+						best = Miss{r, p, n, s.Span, present, all}
+					}
+				}
+			}
+		}
+	}
+	return best, best.Rule != nil
+}

@@ -629,3 +629,30 @@ func alternatives(s string) []string {
 	}
 	return append(out, s[start:])
 }
+
+// Parts counts the parts of the pattern that ask for words, and those of them
+// for which a word to begin with stands in the sentence: how near the sentence
+// comes to a match. Of several sequences that a pattern stands for, the
+// nearest counts.
+func (p *Pattern) Parts(d *text.Doc, s text.Sentence) (present, all int) {
+	for _, elems := range p.variants {
+		n, want := 0, 0
+		for _, e := range elems {
+			if e.kind != phrases || e.optional {
+				continue
+			}
+			want++
+			first := make([]text.Word, 0, len(e.trie.next))
+			for w := range e.trie.next {
+				first = append(first, w)
+			}
+			if d.Has(s, first) {
+				n++
+			}
+		}
+		if all == 0 || n*all > present*want {
+			present, all = n, want
+		}
+	}
+	return present, all
+}

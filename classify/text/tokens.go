@@ -356,7 +356,8 @@ func (d *Doc) sentences() {
 		if i+1 < len(d.Sentences) {
 			limit = d.Tokens[d.Sentences[i+1].First].Start
 		}
-		for s.End < limit && strings.IndexByte(".!?\"')", d.Text[s.End]) >= 0 {
+		// its end mark, and signs written against the last word: 10°, 20%
+		for s.End < limit && strings.IndexByte(" \t\r\n([{", d.Text[s.End]) < 0 {
 			s.End++
 		}
 	}

@@ -2,11 +2,13 @@ package main
 
 import (
 	"fmt"
+	"io"
 	"strings"
 
 	"github.com/spf13/cobra"
 
 	"catena/classify"
+	"catena/ingest/corpus"
 	"catena/ingest/store"
 )
 
@@ -53,12 +55,12 @@ func runExplain(cmd *cobra.Command, g *globalOptions, source string, given []str
 			return err
 		}
 		fmt.Fprintf(cmd.OutOrStdout(), "%s\nrule book %s\n", headline(r), c.Classifier.Version())
-		printReasons(cmd, r, c.Classifier.Explain(&r.Occurrence, factor), factor)
+		printReasons(cmd, c.Classifier, r, c.Classifier.Explain(&r.Occurrence, factor), factor)
 	}
 	return nil
 }
 
-func printReasons(cmd *cobra.Command, r *store.Row, reasons []classify.Reason, factor string) {
+func printReasons(cmd *cobra.Command, c *classify.Classifier, r *store.Row, reasons []classify.Reason, factor string) {
 	out := cmd.OutOrStdout()
 	tags := 0
 	for _, x := range reasons {
@@ -98,5 +100,30 @@ func printReasons(cmd *cobra.Command, r *store.Row, reasons []classify.Reason, f
 	}
 	if tags == 0 && factor != "" {
 		fmt.Fprintf(out, "\nNo tag of %s: not mentioned in words that a rule knows, which is not a denial.\n", factor)
+		if m, ok := c.NearestMiss(&r.Occurrence, factor); ok {
+			fmt.Fprintf(out, "Nearest to a match (words for %d of the %d parts of a pattern of %s):\n  %s\n  looked for: %s\n", m.Present, m.All, m.Rule.ID,
+				clean(strings.TrimSpace(m.Sentence.Of(r.Narratives[m.Narrative].Text))), m.Pattern.Source)
+		}
+	}
+	if factor == "" && len(r.Chain.Links) > 1 {
+		printOrder(out, c.Tag(&r.Occurrence).Chain)
+	}
+}
+
+// printOrder tells why the links of a chain stand in their order.
+func printOrder(out io.Writer, chain corpus.Chain) {
+	because := map[string]string{
+		"text": "as told", "words": "by words such as due to, after or while", "clock": "by the times that are told",
+	}
+	fmt.Fprintf(out, "\nOrder of time:\n")
+	for i, l := range chain.Links {
+		fmt.Fprintf(out, "  %d. %s, %s", i+1, l.Factor, because[l.Order])
+		if l.Seconds > 0 {
+			fmt.Fprintf(out, ", %.4g s after the link before", l.Seconds)
+		}
+		fmt.Fprintln(out)
+	}
+	if chain.BrokenBy != "" {
+		fmt.Fprintf(out, "  broken by %s\n", chain.BrokenBy)
 	}
 }
