@@ -252,7 +252,12 @@ func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 	at := map[string]placed{}
 	for _, t := range told {
 		for i, p := range t.hits {
-			if linked(links, p.factor) >= 0 {
+			if at := linked(links, p.factor); at >= 0 {
+				if p.factor == ended && !t.again {
+					l := links[at] // the last place is where it ended
+					l.Tag = t.base + p.tag
+					links = append(slices.Delete(links, at, at+1), l)
+				}
 				continue
 			}
 			order := "text"
@@ -266,6 +271,7 @@ func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 			links = slices.Insert(links, c.place(links, t, i), corpus.Link{Factor: p.factor, Tag: t.base + p.tag, Order: order})
 		}
 	}
+	c.triggerFirst(links, at)
 	c.settle(links, c.book.Always)
 	if summary {
 		c.settle(links, c.book.Usually)
@@ -302,6 +308,10 @@ func elapsed(l *corpus.Link, before, p placed) {
 	}
 }
 
+// ended is the factor of which the last place counts, not the first: a flight
+// is recovered when it is over.
+const ended = "recovered"
+
 func linked(links []corpus.Link, factor string) int {
 	return slices.IndexFunc(links, func(l corpus.Link) bool { return l.Factor == factor })
 }
@@ -322,6 +332,24 @@ func (c *Classifier) place(links []corpus.Link, t telling, i int) int {
 		}
 	}
 	return at
+}
+
+// triggerFirst moves a trigger that is told only after what it brought about
+// ("we found later that ...") ahead of the first condition or outcome, where no
+// other trigger stands there, and neither words nor a clock say otherwise.
+func (c *Classifier) triggerFirst(links []corpus.Link, at map[string]placed) {
+	first := slices.IndexFunc(links, func(l corpus.Link) bool { r := c.rank(l.Factor); return r == 0 || r == 2 || r == 3 })
+	if first < 0 || c.rank(links[first].Factor) == 0 {
+		return
+	}
+	for j := first + 1; j < len(links); j++ {
+		if c.rank(links[j].Factor) == 0 && links[j].Order == "text" && at[links[j].Factor].sentence != at[links[first].Factor].sentence {
+			l := links[j]
+			copy(links[first+1:j+1], links[first:j])
+			links[first] = l
+			return
+		}
+	}
 }
 
 // settle moves links forward until no pair stands against the order given.
