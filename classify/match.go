@@ -42,11 +42,17 @@ type hit struct {
 func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 	out := corpus.Tagged{Occurrence: *o, CutOff: o.CutOffs(), Rulebook: c.Version(), Tags: []corpus.Tag{}}
 	var told []telling
+	var doubts []string
 	for n, narrative := range o.Narratives {
 		d := c.book.Lexicon.Analyse(narrative.Text)
 		hits := c.narrative(d, narrative.Kind, c.frame(o, d))
 		for i := range hits {
 			hits[i].Narrative = n
+		}
+		for _, doubt := range c.doubts(d, hits) {
+			if !slices.Contains(doubts, doubt) {
+				doubts = append(doubts, doubt)
+			}
 		}
 		told = append(told, c.tellings(d, narrative.Kind, len(out.Tags), c.inTime(d, hits))...)
 		for _, h := range hits {
@@ -54,6 +60,7 @@ func (c *Classifier) Tag(o *corpus.Occurrence) corpus.Tagged {
 		}
 	}
 	out.Chain = c.chain(out.Tags, told)
+	out.Chain.Doubts = doubts
 	c.strengths(out.Tags, o.Narratives)
 	return out
 }

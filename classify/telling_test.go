@@ -114,3 +114,18 @@ func TestQuantities(t *testing.T) {
 		}
 	}
 }
+
+// A contradiction is named, not guessed at.
+func TestDoubts(t *testing.T) {
+	for text, want := range map[string]string{
+		"The left engine quit. The right engine failed. It yawed left.":                            "engines on both sides are told to have failed: no side is taken as dead",
+		"The left engine quit. Vmc is 84 knots, or Vmc is 88 knots by the newer book.":             "more than one minimum control speed is told (84 kt, 88 kt): no speed is compared with it",
+		"The aircraft stalled. A second witness is sure that the aircraft had not stalled.":        "stall is both affirmed and denied",
+		"The left engine quit. The right engine ran normally.":                                     "",
+		"The left engine quit and was never restarted. Vmc is 84 knots. The Vmc of 84 knots held.": "",
+	} {
+		if got := strings.Join(tagged(t, corpus.Narrative{Text: text}).Chain.Doubts, "; "); got != want {
+			t.Errorf("%q: %q, want %q", text, got, want)
+		}
+	}
+}

@@ -92,6 +92,9 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 	if r.Chain.BrokenBy != "" {
 		fmt.Fprintf(out, "  broken by: %s\n", r.Chain.BrokenBy)
 	}
+	for _, doubt := range r.Chain.Doubts {
+		fmt.Fprintf(out, "  doubt: %s\n", clean(doubt))
+	}
 	others := 0
 	for _, t := range r.Tags {
 		if t.Assertion == corpus.Affirmed {

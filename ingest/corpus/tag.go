@@ -66,9 +66,10 @@ type Link struct {
 // Chain is the ordered links of one occurrence: affirmed tags only, each
 // factor once, the earliest first.
 type Chain struct {
-	Links    []Link `json:"links"`
-	Outcome  string `json:"outcome,omitempty"`
-	BrokenBy string `json:"broken_by,omitempty"`
+	Links    []Link   `json:"links"`
+	Outcome  string   `json:"outcome,omitempty"`
+	BrokenBy string   `json:"broken_by,omitempty"`
+	Doubts   []string `json:"doubts,omitempty"` // what the narratives contradict themselves in
 }
 
 // Tagged is an occurrence with what the rule book found in it. Tags and

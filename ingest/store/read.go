@@ -141,7 +141,7 @@ func newParts(ctx context.Context, tx *sql.Tx) (*parts, error) {
 	}{
 		{&p.narratives, "SELECT kind, text FROM narrative WHERE occurrence = ? ORDER BY key"},
 		{&p.tags, `SELECT factor, assertion, basis, narrative, start, "end", rule, strength, side, actor, quantity, rule_hash FROM tag WHERE occurrence = ? ORDER BY n`},
-		{&p.chain, "SELECT outcome, broken_by, links FROM chain WHERE occurrence = ?"},
+		{&p.chain, "SELECT outcome, broken_by, links, doubts FROM chain WHERE occurrence = ?"},
 	} {
 		st, err := tx.PrepareContext(ctx, s.query)
 		if err != nil {
@@ -199,12 +199,15 @@ func (p *parts) read(ctx context.Context, r *Row) error {
 	if err != nil {
 		return err
 	}
-	var links string
-	switch err := p.chain.QueryRowContext(ctx, r.Key).Scan(&r.Chain.Outcome, &r.Chain.BrokenBy, &links); {
+	var links, doubts string
+	switch err := p.chain.QueryRowContext(ctx, r.Key).Scan(&r.Chain.Outcome, &r.Chain.BrokenBy, &links, &doubts); {
 	case errors.Is(err, sql.ErrNoRows):
 		links = "[]"
 	case err != nil:
 		return err
+	}
+	if doubts != "" {
+		r.Chain.Doubts = strings.Split(doubts, "\n")
 	}
 	return json.Unmarshal([]byte(links), &r.Chain.Links)
 }

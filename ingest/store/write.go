@@ -266,7 +266,7 @@ func (b *Batch) tags(key int64, t *corpus.Tagged) {
 		b.err = fmt.Errorf("write chain: %w", err)
 		return
 	}
-	b.exec("INSERT INTO chain VALUES (?, ?, ?, ?)", key, t.Chain.Outcome, t.Chain.BrokenBy, string(links))
+	b.exec("INSERT INTO chain VALUES (?, ?, ?, ?, ?)", key, t.Chain.Outcome, t.Chain.BrokenBy, string(links), strings.Join(t.Chain.Doubts, "\n"))
 }
 
 // Retag replaces the tags and the chain of an occurrence; its content and

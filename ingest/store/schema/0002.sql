@@ -11,6 +11,9 @@ UPDATE occurrence SET cut_off = 1 WHERE EXISTS (
   AND (length(n.text) IN (115, 255, 1000, 2000, 4000, 32767) OR length(n.text) = 114 AND n.kind = 'remarks')
   AND substr(rtrim(n.text, ' ' || char(9) || char(10) || char(13)), -1) NOT IN ('.', '!', '?', '"', ')', ''));
 
+-- What the narratives contradict themselves in, a line each.
+ALTER TABLE chain ADD COLUMN doubts TEXT NOT NULL DEFAULT '';
+
 -- What a rule book and engine of a version were made of: JSON, the hash of
 -- each rule, and of all else under the name ''.
 CREATE TABLE rulebook (
