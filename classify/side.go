@@ -1,7 +1,6 @@
 package classify
 
 import (
-	"slices"
 	"strings"
 
 	"catena/classify/rulebook"
@@ -21,17 +20,19 @@ type airframe struct {
 // side.
 func (c *Classifier) frame(o *corpus.Occurrence, d *text.Doc) airframe {
 	f := airframe{engines: o.Engines}
+	told := 0 // the smallest number of engines that the words tell
 	for _, s := range d.Sentences {
 		if rulebook.Stands(c.book.CentreLine, d, s) {
-			return airframe{engines: f.engines}
+			return f
+		}
+		for n := 2; n <= 4; n++ {
+			if (told == 0 || n < told) && rulebook.Stands(c.book.EngineCount[n], d, s) {
+				told = n
+			}
 		}
 	}
-	for n := 2; n <= 4; n++ {
-		look := c.book.EngineCount[n]
-		if slices.ContainsFunc(d.Sentences, func(s text.Sentence) bool { return rulebook.Stands(look, d, s) }) {
-			f.engines = n
-			break
-		}
+	if told > 0 {
+		f.engines = told
 	}
 	category := strings.ToLower(o.Category)
 	f.dead = f.engines != 1 && !strings.HasPrefix(category, "heli") && !strings.HasPrefix(category, "rotor") && !strings.HasPrefix(category, "glid")

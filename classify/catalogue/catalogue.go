@@ -123,7 +123,18 @@ func (t *Tree) Lineage(id string) []string {
 
 // Implies tells whether a tag of child also counts under ancestor.
 func (t *Tree) Implies(child, ancestor string) bool {
-	return slices.Contains(t.Lineage(child), ancestor)
+	for {
+		i, ok := t.byID[child]
+		switch {
+		case !ok:
+			return false
+		case child == ancestor:
+			return true
+		}
+		if child = t.factors[i].Parent; child == "" {
+			return false
+		}
+	}
 }
 
 // Below lists the factor and all factors under it.

@@ -751,7 +751,7 @@ func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match))
 // Stands tells whether one of the patterns matches anywhere in the sentence.
 func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 	for _, p := range patterns {
-		if !p.possible(d, s) {
+		if !p.possible(d, s) || !d.Has(s, p.first) {
 			continue
 		}
 		for i := s.First; i < s.Last; i++ {
