@@ -2,6 +2,7 @@ package rulebook
 
 import (
 	"fmt"
+	"maps"
 	"strconv"
 	"strings"
 
@@ -285,6 +286,14 @@ type compiler struct {
 	lexicon *text.Lexicon
 	terms   map[string]*term
 	used    map[string]bool // terms used by the pattern at hand, and below them
+	tries   map[string]*compiled
+}
+
+// compiled is a word, term or group that was met before: most terms stand in
+// many patterns, and a trie does not change.
+type compiled struct {
+	trie *trie
+	used map[string]bool
 }
 
 func (c *compiler) pattern(source string) (*Pattern, error) {
@@ -424,7 +433,17 @@ func (c *compiler) elem(item string) (elem, error) {
 	} else if rest, ok := strings.CutSuffix(item, ":noun"); ok {
 		item, e.noun = rest, true
 	}
+	if known := c.tries[item]; known != nil {
+		maps.Copy(c.used, known.used)
+		e.trie = known.trie
+		return e, nil
+	}
+	outer := c.used
+	c.used = map[string]bool{}
 	seqs, err := c.phrases(item)
+	used := c.used
+	c.used = outer
+	maps.Copy(c.used, used)
 	if err != nil {
 		return e, err
 	}
@@ -435,6 +454,10 @@ func (c *compiler) elem(item string) (elem, error) {
 	for _, s := range seqs {
 		e.trie.add(s)
 	}
+	if c.tries == nil {
+		c.tries = map[string]*compiled{}
+	}
+	c.tries[item] = &compiled{e.trie, used}
 	return e, nil
 }
 
