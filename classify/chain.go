@@ -200,7 +200,12 @@ func (c *Classifier) turning(d *text.Doc, s text.Sentence, wanted bool) turns {
 		return nil
 	}
 	var out turns
+	after := map[int]bool{} // tokens where words such as "after that" begin
+	c.book.FindOnward(d, s, func(m rulebook.Match) { after[m.First] = true })
 	c.book.FindTurns(d, s, func(m rulebook.Match) {
+		if after[m.First] {
+			return
+		}
 		end := m.Last
 		for end < s.Last && (end == m.Last || d.Tokens[end].Break == text.NoBreak) {
 			end++
@@ -272,10 +277,11 @@ func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 		}
 	}
 	c.triggerFirst(links, at)
-	c.settle(links, c.book.Always)
+	order := c.book.Always
 	if summary {
-		c.settle(links, c.book.Usually)
+		order = slices.Concat(c.book.Usually, order)
 	}
+	c.settle(links, order)
 	for i := range links[min(1, len(links)):] {
 		elapsed(&links[i+1], at[links[i].Factor], at[links[i+1].Factor])
 	}
@@ -352,21 +358,29 @@ func (c *Classifier) triggerFirst(links []corpus.Link, at map[string]placed) {
 	}
 }
 
-// settle moves links forward until no pair stands against the order given.
+// settle moves links forward until no pair stands against the order given, or
+// until it is clear that the order contradicts itself.
 func (c *Classifier) settle(links []corpus.Link, order []rulebook.Before) {
 	against := func(earlier, later string) bool {
 		return slices.ContainsFunc(order, func(b rulebook.Before) bool {
 			return c.book.Tree.Implies(later, b.First) && c.book.Tree.Implies(earlier, b.Then)
 		})
 	}
-	for j := range links {
-		for i := range j {
-			if against(links[i].Factor, links[j].Factor) {
-				l := links[j]
-				copy(links[i+1:j+1], links[i:j])
-				links[i] = l
-				break
+	for range links {
+		moved := false
+		for j := range links {
+			for i := range j {
+				if against(links[i].Factor, links[j].Factor) {
+					l := links[j]
+					copy(links[i+1:j+1], links[i:j])
+					links[i] = l
+					moved = true
+					break
+				}
 			}
+		}
+		if !moved {
+			return
 		}
 	}
 }

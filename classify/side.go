@@ -81,6 +81,11 @@ func (f airframe) side(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, s text.
 	if joined(lex, d, max(s.First, m.First-2*around), m.Last) {
 		return ""
 	}
+	if r.Side == "rudder" {
+		if found := besideRudder(lex, d, m); found != "" {
+			return found
+		}
+	}
 	if found := f.sideWithin(lex, r, d, m.First, m.Last); found != "" {
 		return found
 	}
@@ -95,7 +100,10 @@ func (f airframe) inherit(lex *text.Lexicon, d *text.Doc, hits []hit) {
 		if !engineWords[lex.Name(d.Tokens[i].Word)] {
 			continue
 		}
-		for k := i; k >= max(0, i-4) && d.Tokens[k].Break != text.Stop; k-- {
+		for k := i; k >= max(0, i-4); k-- {
+			if k < i && d.Tokens[k+1].Break == text.Stop {
+				break // the sentence before
+			}
 			switch here := f.sideName(lex, d.Tokens[k].Word); {
 			case here == "":
 			case only != "" && only != here:
@@ -157,4 +165,33 @@ func (f airframe) sideWithin(lex *text.Lexicon, r *rulebook.Rule, d *text.Doc, f
 		found = here
 	}
 	return found
+}
+
+var rudderWords = map[string]bool{"rudder": true, "pedal": true, "foot": true, "boot": true, "leg": true}
+
+// besideRudder reads the side that stands right before a word for the rudder
+// within a match: "right rudder instead of left".
+func besideRudder(lex *text.Lexicon, d *text.Doc, m rulebook.Match) string {
+	for i := m.First + 1; i < m.Last; i++ {
+		if !rudderWords[lex.Name(d.Tokens[i].Word)] || rejected(lex, d, i-1) {
+			continue
+		}
+		switch side := lex.Name(d.Tokens[i-1].Word); side {
+		case "left", "right":
+			return side
+		}
+	}
+	return ""
+}
+
+// rejected tells whether the side at token i is named as the one that was not
+// taken: "instead of left", "rather than left", "not left".
+func rejected(lex *text.Lexicon, d *text.Doc, i int) bool {
+	name := func(i int) string {
+		if i < 0 {
+			return ""
+		}
+		return lex.Name(d.Tokens[i].Word)
+	}
+	return name(i-1) == "not" || name(i-1) == "of" && name(i-2) == "instead" || name(i-1) == "than" && name(i-2) == "rather"
 }
