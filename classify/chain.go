@@ -62,6 +62,7 @@ type placed struct {
 	sentence int
 	byWords  bool
 	explains bool // told in a sentence that says what brought the event about
+	earlier  bool // told in the past perfect: it had happened before
 	when     when
 	since    string // the factor told before it, which when.later counts from
 }
@@ -131,6 +132,7 @@ func (c *Classifier) sentenceInTime(d *text.Doc, hits []hit, base int, before st
 		if at != nil {
 			p.when = at[k]
 		}
+		p.earlier = c.pastPerfect(d, d.Sentences[n], hits[i].match)
 		switch t.at(hits[i].match.First) {
 		case onward:
 			from = len(out)
@@ -276,6 +278,7 @@ func (c *Classifier) chain(tags []corpus.Tag, told []telling) corpus.Chain {
 			links = slices.Insert(links, c.place(links, t, i), corpus.Link{Factor: p.factor, Tag: t.base + p.tag, Order: order})
 		}
 	}
+	c.hadHappened(links, at)
 	c.triggerFirst(links, at)
 	order := c.book.Always
 	if summary {
@@ -338,6 +341,38 @@ func (c *Classifier) place(links []corpus.Link, t telling, i int) int {
 		}
 	}
 	return at
+}
+
+// pastPerfect tells whether the words of a match, or the two before them in
+// their clause, say that something had happened.
+func (c *Classifier) pastPerfect(d *text.Doc, s text.Sentence, m rulebook.Match) bool {
+	for i := max(s.First, m.First-2); i < m.Last; i++ {
+		if c.word(d, i) == "had" && (i >= m.First || d.Tokens[i+1].Break == text.NoBreak) {
+			return true
+		}
+	}
+	return false
+}
+
+// hadHappened moves a trigger or response that is told in the past perfect
+// ahead of what is told before it and usually comes later: "The aircraft
+// stalled. The checklist had not been used."
+func (c *Classifier) hadHappened(links []corpus.Link, at map[string]placed) {
+	for j := range links {
+		rank := c.rank(links[j].Factor)
+		if p := at[links[j].Factor]; !p.earlier || rank > 1 || links[j].Order != "text" {
+			continue
+		}
+		for i := range j {
+			if p := at[links[i].Factor]; c.rank(links[i].Factor) > rank && !p.earlier && p.sentence < at[links[j].Factor].sentence {
+				l := links[j]
+				l.Order = "words"
+				copy(links[i+1:j+1], links[i:j])
+				links[i] = l
+				break
+			}
+		}
+	}
 }
 
 // triggerFirst moves a trigger that is told only after what it brought about

@@ -163,7 +163,7 @@ func TestBelowByNumbers(t *testing.T) {
 // left; rudder on the live side is right, on the dead side wrong.
 func TestDeadSide(t *testing.T) {
 	for text, want := range map[string]string{
-		"The left engine quit. The aircraft yawed left. The student pressed the left pedal.":    "roll-toward-dead-engine wrong-rudder",
+		"The left engine quit. The aircraft yawed left. The student pressed the left pedal.":    "roll-toward-dead-engine rudder-wrong-side",
 		"The left engine quit. The aircraft rolled right. The student pressed the right pedal.": "",
 		"The No. 2 engine failed. The right wing dropped.":                                      "roll-toward-dead-engine",
 		"Both engines quit, first the left engine, and the right engine failed. It yawed left.": "",

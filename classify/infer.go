@@ -48,7 +48,7 @@ func onDeadSide(book *rulebook.Book, d *text.Doc, hits []hit, frame airframe) []
 			return dead == h.rule.LiveSide
 		}
 		return slices.ContainsFunc(hits, func(o hit) bool {
-			return !o.rule.DeadSide && o.Assertion == corpus.Affirmed && book.Tree.Implies(o.Factor, h.Factor)
+			return !o.rule.DeadSide && o.Assertion == corpus.Affirmed && (book.Tree.Implies(o.Factor, h.Factor) || book.Tree.Implies(h.Factor, o.Factor))
 		})
 	})
 }

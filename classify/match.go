@@ -127,20 +127,35 @@ func basis(r *rulebook.Rule) corpus.Basis {
 	return corpus.Told
 }
 
-// inPlace drops the hits of rules that hold only after something else, where
-// nothing of that kind is affirmed before them: a safe landing is a recovery
-// only where there was something to recover from.
+// inPlace drops the hits of rules whose place among the others does not suit
+// them: those that hold only after something else where nothing of that kind
+// is affirmed before (a safe landing is a recovery only where there was
+// something to recover from), those that do not hold after it, and those on
+// words that tell something else.
 func (c *Classifier) inPlace(hits []hit) []hit {
 	before := map[catalogue.Kind]bool{}
-	return slices.DeleteFunc(hits, func(h hit) bool {
-		if len(h.rule.After) > 0 && !slices.ContainsFunc(h.rule.After, func(k catalogue.Kind) bool { return before[k] }) {
+	var said []string // factors affirmed so far
+	hits = slices.DeleteFunc(hits, func(h hit) bool {
+		if len(h.rule.After) > 0 && !slices.ContainsFunc(h.rule.After, func(k catalogue.Kind) bool { return before[k] }) ||
+			slices.ContainsFunc(said, func(f string) bool { return c.oneOf(f, h.rule.NotAfter) }) {
 			return true
 		}
 		if f, ok := c.book.Tree.Factor(h.Factor); ok && h.Assertion == corpus.Affirmed {
 			before[f.Kind] = true
+			said = append(said, h.Factor)
 		}
 		return false
 	})
+	return slices.DeleteFunc(slices.Clone(hits), func(h hit) bool {
+		return len(h.rule.NotOver) > 0 && slices.ContainsFunc(hits, func(o hit) bool {
+			return o.Assertion == corpus.Affirmed && o.Overlaps(h.Span) && c.oneOf(o.Factor, h.rule.NotOver)
+		})
+	})
+}
+
+// oneOf tells whether a factor counts under one of others.
+func (c *Classifier) oneOf(factor string, others []string) bool {
+	return slices.ContainsFunc(others, func(f string) bool { return c.book.Tree.Implies(factor, f) })
 }
 
 // holds checks the conditions of a rule around a match in sentence n.

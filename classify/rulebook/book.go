@@ -75,6 +75,8 @@ type Rule struct {
 	Nowhere  []*Pattern       // none of these may stand anywhere in the narrative
 	PartOf   []*Pattern       // the match may not overlap one of these
 	NotBy    []string         // actors whose deed it is not
+	NotAfter []string         // no affirmed factor of these may come before
+	NotOver  []string         // its words may not overlap those of an affirmed factor of these
 	After    []catalogue.Kind // an affirmed factor of one of these kinds must come before
 	Examples []Example
 	File     string
@@ -241,6 +243,8 @@ type ruleYAML struct {
 	PartOf    []located `yaml:"not part of"`
 	NotBy     []string  `yaml:"not by"`
 	After     []string  `yaml:"only after"`
+	NotAfter  []string  `yaml:"not after"`
+	NotOver   []string  `yaml:"not over"`
 	Match     []located `yaml:"match"`
 	NoMatch   []located `yaml:"no match"`
 	Denied    []located `yaml:"denied"`
@@ -540,7 +544,12 @@ func (l *loader) patterns(c *compiler, file string, sources []located) []*Patter
 func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 	r := &Rule{
 		ID: id, DeadSide: y.DeadSide, LiveSide: y.LiveSide, Denies: y.Denies, Kinds: y.Kinds, Factor: y.Factor, Says: y.Says, Strength: cmp.Or(y.Strength, 0.9), Side: y.Side,
-		File: file, Line: y.Name.line, NotBy: y.NotBy,
+		File: file, Line: y.Name.line, NotBy: y.NotBy, NotAfter: y.NotAfter, NotOver: y.NotOver,
+	}
+	for _, f := range slices.Concat(y.NotAfter, y.NotOver) {
+		if _, known := l.book.Tree.Factor(f); !known {
+			l.fault(file, r.Line, "rule %q: not after, not over: the catalogue has no factor %q", id, f)
+		}
 	}
 	for _, name := range y.NotBy {
 		if !slices.Contains(actorNames, name) {
@@ -602,6 +611,7 @@ func (l *loader) rule(c *compiler, id, file string, y *ruleYAML) *Rule {
 func (l *loader) ruleHash(y *ruleYAML, id string, used map[string]bool) string {
 	h := sha256.New()
 	fmt.Fprintf(h, "%s|%g|%s|%v|%t|%t|%t|%v|%v", id, y.Strength, y.Side, y.After, y.DeadSide, y.LiveSide, y.Denies, y.Kinds, y.NotBy)
+	fmt.Fprintf(h, "|%v|%v", y.NotAfter, y.NotOver)
 	for _, part := range [][]located{y.Look, y.With, y.Unless, y.Near, y.NotNear, y.Nowhere, y.PartOf} {
 		fmt.Fprint(h, "\n--")
 		for _, s := range part {
