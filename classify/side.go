@@ -105,7 +105,7 @@ func (f airframe) inherit(lex *text.Lexicon, d *text.Doc, hits []hit) {
 				break // the sentence before
 			}
 			switch here := f.sideName(lex, d.Tokens[k].Word); {
-			case here == "":
+			case here == "" || rejected(lex, d, k) || k < i && rudderWords[lex.Name(d.Tokens[k+1].Word)]:
 			case only != "" && only != here:
 				return // both sides are spoken of
 			default:
@@ -134,17 +134,21 @@ func (f airframe) sideName(lex *text.Lexicon, w text.Word) string {
 	}
 }
 
-// joined tells whether "and" or "or" stands between left and right, as in
-// "the left and right engines".
+// joined tells whether "and" or "or" joins left and right, as in "the left and
+// the right engines"; not where a clause begins between them.
 func joined(lex *text.Lexicon, d *text.Doc, from, to int) bool {
-	before, link := "", false
+	const apart = 4 // words
+	before, at, link := "", 0, false
 	for i := from; i < to; i++ {
+		if i > from && d.Tokens[i].Break != text.NoBreak {
+			before, link = "", false
+		}
 		switch name := lex.Name(d.Tokens[i].Word); name {
 		case "left", "right":
-			if before != "" && before != name && link {
+			if before != "" && before != name && link && i-at <= apart {
 				return true
 			}
-			before, link = name, false
+			before, at, link = name, i, false
 		case "and", "or":
 			link = true
 		}
