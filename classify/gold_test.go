@@ -37,6 +37,7 @@ var goldSets = []struct {
 	{"words", []string{"testdata/gold/words"}},
 	{"assertion", []string{"testdata/gold/assertion"}},
 	{"sides", []string{"testdata/gold/sides"}},
+	{"twins", []string{"testdata/gold/twins"}},
 }
 
 // sheet is what is counted over a set of narratives.
