@@ -36,14 +36,17 @@ var byteOrderMark = []byte("\xEF\xBB\xBF")
 // asTable is what to try with a file that some program can open.
 const asTable = "save it as CSV or JSON"
 
-// signatures are first bytes that tell a file which holds no text to read
-// (the formats' own specifications), the more telling before the less.
-var signatures = []struct {
+// signature is what a file of some other kind begins with.
+type signature struct {
 	at    int
 	bytes string
 	what  string
 	try   string
-}{
+}
+
+// signatures are first bytes that tell a file which holds no text to read
+// (the formats' own specifications), the more telling before the less.
+var signatures = []signature{
 	{0, "%PDF-", "a PDF document", "export the reports as CSV or JSON from where they were published"},
 	{0, "{\\rtf", "an RTF document", asTable},
 	{0, "PK\x03\x04", "a ZIP archive", "unpack it and load what is inside"},
@@ -63,8 +66,10 @@ var signatures = []struct {
 	{0, "7z\xBC\xAF\x27\x1C", "a 7z archive", "unpack it and load what is inside"},
 	{0, "Rar!", "a RAR archive", "unpack it and load what is inside"},
 	{257, "ustar", "a tar archive", "unpack it and load what is inside"},
-	{0, "\xFF\xFE", "UTF-16 text", "save it as UTF-8"},
-	{0, "\xFE\xFF", "UTF-16 text", "save it as UTF-8"},
+}
+
+// pages are first characters of text that is no table of reports.
+var pages = []signature{
 	{0, "<!DOCTYPE html", "a web page", "download the table itself"},
 	{0, "<!doctype html", "a web page", "download the table itself"},
 	{0, "<html", "a web page", "download the table itself"},
@@ -72,10 +77,20 @@ var signatures = []struct {
 }
 
 // refuse returns an error that says what a file is that cannot hold a table
-// of reports, judged by its first bytes.
-func refuse(head []byte) error {
+// of reports, judged by its first bytes before they are decoded.
+func refuse(head []byte) error { return refuseAny(signatures, head) }
+
+// refuseText is refuse for the first characters, decoded.
+func refuseText(head []byte) error {
+	if err := refuseAny(pages, head); err != nil {
+		return err
+	}
+	return refuseBinary(head)
+}
+
+func refuseAny(known []signature, head []byte) error {
 	text := bytes.TrimLeft(head, jsonSpace)
-	for _, s := range signatures {
+	for _, s := range known {
 		if len(head) < s.at {
 			continue
 		}
@@ -88,7 +103,7 @@ func refuse(head []byte) error {
 		}
 		return fmt.Errorf("%s, not a table of reports: %s", what, try)
 	}
-	return refuseBinary(head)
+	return nil
 }
 
 // refuseBinary refuses bytes that no text holds: a NUL, or more than one

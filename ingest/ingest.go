@@ -40,7 +40,7 @@ type Item struct {
 	Source     corpus.Source
 	Occurrence *corpus.Occurrence
 	SetAside   *corpus.SetAside
-	Raw        []byte // the row exactly as read, without the line break that ends it; empty for a spooled row
+	Raw        []byte // the row as read, in UTF-8, without the line break that ends it; empty for a spooled row
 }
 
 // File is an open file of occurrences. It is for one goroutine, but BytesRead
@@ -52,6 +52,7 @@ type File struct {
 	closer []io.Closer
 	disk   *countingReader
 	size   int64
+	text   *charsetReader
 
 	window *window
 	reader rowReader
@@ -95,12 +96,18 @@ func (f *File) open(in io.Reader) error {
 	if err != nil {
 		return err
 	}
-	w := newWindow(in)
+	packed := bufio.NewReaderSize(in, windowSize)
+	head, _ := packed.Peek(windowSize)
+	if err := refuse(head); err != nil {
+		return err
+	}
+	f.text = newCharsetReader(packed)
+	w := newWindow(f.text)
 	f.window = w
 	if err := begin(w); err != nil {
 		return err
 	}
-	if err := refuse(w.bytes()); err != nil {
+	if err := refuseText(w.bytes()); err != nil {
 		return err
 	}
 	format := formatOf(w.bytes())
@@ -265,6 +272,10 @@ func (f *File) orderDates() error {
 
 // Map is what the columns are taken for. It must not be changed.
 func (f *File) Map() *Map { return &f.mapper.Map }
+
+// Charset names the character set that the rows read so far were decoded
+// from.
+func (f *File) Charset() string { return f.text.name }
 
 // Header is the header row as read, nil for formats that have none. Set above
 // a row that was set aside, it makes that row a file again.

@@ -79,6 +79,7 @@ type mapper struct {
 	place  bool // a column names the whole place
 	whole  bool // a column names the whole operation
 	plain  string
+	event  string // the kind of event where the rows do not say
 }
 
 // plan is what to do with a column's cells.
@@ -100,7 +101,7 @@ func newMapper(format string, names []string) *mapper {
 		m.whole = m.whole || p.field == "operation"
 		m.record = m.record || format == "json" && name == "narratives"
 		if squeeze(name) == "acn" { // the reports of the voluntary system that has these numbers
-			m.plain = "reporter"
+			m.plain, m.event = "reporter", "report"
 		}
 		if p.exact {
 			m.taken[p.field] = name

@@ -29,6 +29,9 @@ func (m *mapper) occurrence(cells []cell, source string) (*corpus.Occurrence, st
 		}
 	}
 	b.join()
+	if b.o.Event == "" {
+		b.o.Event = m.event
+	}
 	if b.o.ID == "" && b.o.Date == (corpus.Date{}) && len(b.o.Narratives) == 0 {
 		return nil, "no id, date or narrative"
 	}

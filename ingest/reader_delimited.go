@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"fmt"
 	"io"
+	"slices"
 	"strings"
 )
 
@@ -16,7 +17,8 @@ type delimitedReader struct {
 	lim    limits
 	split  splitter
 	table  *columnTable
-	header []byte // the header row as read
+	header []byte // the header row or rows as read
+	ahead  *row   // read to see whether it is a second header row, and is none
 
 	unclosed int // rows set aside for a quote that is never closed
 }
@@ -35,23 +37,84 @@ func newDelimitedReader(w *window, lim limits) (rowReader, error) {
 		n, _ := lineEnd(w.bytes())
 		w.take(n)
 	}
+	first, err := d.headerRow()
+	if err != nil {
+		return nil, err
+	}
+	d.header = first.raw
+	names := d.split.cells(string(first.raw))
+	second, err := d.record()
+	switch {
+	case err != nil: // next tells
+	case second.reason != "":
+		d.ahead = &second
+	default:
+		if below := d.split.cells(string(second.raw)); twoHeaderRows(names, below) {
+			names = joinHeaderRows(names, below)
+			d.header = slices.Concat(first.raw, []byte{'\n'}, second.raw)
+		} else {
+			d.ahead = &second
+		}
+	}
+	d.table.header(names)
+	return d, nil
+}
+
+// headerRow reads the first row; an error says why it can be no header.
+func (d *delimitedReader) headerRow() (row, error) {
 	r, err := d.record()
 	switch {
 	case err == io.EOF:
-		return nil, fmt.Errorf("no header row")
+		return row{}, fmt.Errorf("no header row")
 	case err != nil:
-		return nil, err
+		return row{}, err
 	case r.spool != "":
-		return nil, errSpooled{r.spool, fmt.Errorf("header: %s", r.reason)}
+		return row{}, errSpooled{r.spool, fmt.Errorf("header: %s", r.reason)}
 	case r.reason != "":
-		return nil, fmt.Errorf("header: %s", r.reason)
+		return row{}, fmt.Errorf("header: %s", r.reason)
+	case len(d.split.spans) > maxColumns:
+		return row{}, fmt.Errorf("header: %d columns, more than the limit of %d", len(d.split.spans), maxColumns)
 	}
-	if len(d.split.spans) > maxColumns {
-		return nil, fmt.Errorf("header: %d columns, more than the limit of %d", len(d.split.spans), maxColumns)
+	return r, nil
+}
+
+// twoHeaderRows tells whether a row of groups, each over one or more columns,
+// stands above the names of the columns: the same width, a group that spans
+// columns, and more known words in the lower row than in the upper.
+func twoHeaderRows(upper, lower []string) bool {
+	if len(upper) != len(lower) {
+		return false
 	}
-	d.header = r.raw
-	d.table.header(d.split.cells(string(r.raw)))
-	return d, nil
+	spanning := false
+	above, below := map[string]bool{}, map[string]bool{}
+	for i, name := range lower {
+		up := strings.TrimSpace(upper[i])
+		spanning = spanning || i > 0 && up != "" && up == strings.TrimSpace(upper[i-1])
+		if field, _ := lookupHeader(up); field != "" {
+			above[field] = true
+		}
+		if field, _ := lookupHeader(name); field != "" {
+			below[field] = true
+		}
+	}
+	return spanning && len(below) >= len(above)+2
+}
+
+// joinHeaderRows names each column by its group and its own name.
+func joinHeaderRows(upper, lower []string) []string {
+	names := make([]string, len(lower))
+	for i := range lower {
+		group, name := strings.TrimSpace(upper[i]), strings.TrimSpace(lower[i])
+		switch {
+		case group == "":
+			names[i] = name
+		case name == "":
+			names[i] = group
+		default:
+			names[i] = group + " / " + name
+		}
+	}
+	return names
 }
 
 // errSpooled is an error that leaves a spooled row behind for Open to remove.
@@ -63,7 +126,7 @@ type errSpooled struct {
 func (d *delimitedReader) columns() *columnTable { return d.table }
 
 func (d *delimitedReader) next() (row, error) {
-	r, err := d.record()
+	r, err := d.nextRecord()
 	if err != nil || r.reason != "" {
 		return r, err
 	}
@@ -81,6 +144,19 @@ func (d *delimitedReader) next() (row, error) {
 	r.cells = make([]cell, len(d.table.names))
 	for i, name := range d.table.names {
 		r.cells[i] = cell{column: i, name: name, text: decodeEntities(texts[i])}
+	}
+	return r, nil
+}
+
+// nextRecord is the row read ahead, or the next of the stream.
+func (d *delimitedReader) nextRecord() (row, error) {
+	if d.ahead == nil {
+		return d.record()
+	}
+	r := *d.ahead
+	d.ahead = nil
+	if r.reason == "" {
+		d.split.scan(r.raw, true)
 	}
 	return r, nil
 }

@@ -16,7 +16,7 @@ func TestDelimitedRows(t *testing.T) {
 		{"more cells", "id,narrative\nA,x,y\nB,x\n", "1@2 ! 3 cells where the header has 2\n2@3 B\n"},
 		{"blank cells past the header", "id,narrative\nA,x,, \nB,x\n", "1@2 A\n2@3 B\n"},
 		{"blank row of cells", "id,date,narrative\n,,\nB,2019,x\n", "1@2 ! no id, date or narrative\n2@3 B\n"},
-		{"not UTF-8", "id,narrative\nA,caf\xe9\nB,x\n", "1@2 ! not UTF-8 at byte 6 of the row\n2@3 B\n"},
+		{"not UTF-8", "id,narrative\nA,caf\xe9\nB,né\n", "1@2 ! not UTF-8 at byte 6 of the row\n2@3 B\n"},
 		{"no such day", "id,date\nA,31/02/2019\nB,2019-02-28\n", "1@2 ! date \"31/02/2019\": no such day\n2@3 B\n"},
 		{"engines", "id,engines\nA,two\nB,2\n", "1@2 ! engines \"two\": not a number\n2@3 B\n"},
 		{"unclosed quote at the end", "id,narrative\nA,x\nB,\"open\nC,x\n", "1@2 A\n2@3 ! quote opened on line 3 is never closed\n3@4 C\n"},
@@ -89,5 +89,36 @@ func TestHeadersThatRepeat(t *testing.T) {
 	o := items[0].Occurrence
 	if o.Date.String() != "2019" || fmt.Sprint(o.Extra) != "map[Event Date:2020 NULL:a NULL (2):b NULL (3):d column 4:c]" {
 		t.Errorf("date %s, extra %v", o.Date, o.Extra)
+	}
+}
+
+func TestTwoHeaderRows(t *testing.T) {
+	const text = " ,Time,Place,Place,Aircraft 1,Aircraft 1,Report 1,Report 1,\n" +
+		"ACN,Date,Locale Reference,State Reference,Make Model Name,Flight Phase,Narrative,Synopsis,\n" +
+		"7,202103,Tarnwick,NL,Marrow Twin,Climb,The left engine quit.,Engine failure.,\n"
+	items, m := readAll(t, text, Options{})
+	var got []string
+	for _, c := range m.Columns {
+		got = append(got, c.Column+"="+c.Field)
+	}
+	want := "ACN=id|Time / Date=date|Place / Locale Reference=place|Place / State Reference=place|Aircraft 1 / Make Model Name=make|" +
+		"Aircraft 1 / Flight Phase=phase|Report 1 / Narrative=narrative.reporter|Report 1 / Synopsis=narrative.synopsis|column 9=extra"
+	if s := strings.Join(got, "|"); s != want {
+		t.Errorf("got  %s\nwant %s", s, want)
+	}
+	o := items[0].Occurrence
+	if len(items) != 1 || o == nil || o.ID != "7" || o.Date.String() != "2021-03" || o.Place != "Tarnwick, NL" || len(o.Narratives) != 2 {
+		t.Fatalf("got %s", outcomes(items))
+	}
+	if items[0].Source.Line != 3 {
+		t.Errorf("first row on line %d", items[0].Source.Line)
+	}
+}
+
+// A header whose own columns repeat is one row: what follows is a row of values.
+func TestOneHeaderRowWithRepeats(t *testing.T) {
+	items, m := readAll(t, "id,date,narrative,narrative\n1,2021,Date of event,place\n", Options{})
+	if len(items) != 1 || len(m.Columns) != 4 || items[0].Occurrence == nil {
+		t.Errorf("got %s", outcomes(items))
 	}
 }

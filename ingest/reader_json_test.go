@@ -17,7 +17,7 @@ func TestJSONRows(t *testing.T) {
 		{"line cut from an array", "{\"id\":\"A\"},\n{\"id\":\"B\"},\n", "1@1 A\n2@2 B\n"},
 		{"text behind the object", "{\"id\":\"A\"} x\n{\"id\":\"B\"}\n", "1@1 ! broken JSON at byte 12 of the row: more text after the end of the value\n2@2 B\n"},
 		{"nothing usable", "{\"id\":\"A\"}\n{}\n{\"make\":\"x\"}\n", "1@1 A\n2@2 ! no id, date or narrative\n3@3 ! no id, date or narrative\n"},
-		{"not UTF-8", "{\"id\":\"A\"}\n{\"id\":\"\xff\"}\n", "1@1 A\n2@2 ! not UTF-8 at byte 8 of the row\n"},
+		{"not UTF-8", "{\"id\":\"A\"}\n{\"id\":\"\xff\"}\n{\"place\":\"né\"}\n", "1@1 A\n2@2 ! not UTF-8 at byte 8 of the row\n3@3 ! no id, date or narrative\n"},
 		{"too deep", "{\"id\":\"A\"}\n{\"id\":\"B\",\"x\":" + deep + "}\n", "1@1 A\n2@2 ! broken JSON at byte 78 of the row: nested deeper than 64\n"},
 		{"array over lines", "[\n {\"id\":\"A\"},\n {\"id\":\n \"B\"}\n, {\"id\":\"C\"}]", "1@2 A\n2@3 B\n3@5 C\n"},
 		{"broken element", "[{\"id\":\"A\"},\n{\"id\" 1},\n{\"id\":\"C\"}]", "1@1 A\n2@2 ! broken JSON at byte 7 of the row: want a colon after the key\n3@3 C\n"},

@@ -124,6 +124,9 @@ func tellSource(cmd *cobra.Command, o *loadOptions, sum collection.FileSummary) 
 	if o.source == "" && slices.Contains(sum.Sources, sum.Map.Name) {
 		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s names no source; its occurrences stand under %q (name them with --source)", clean(sum.Path), sum.Map.Name))
 	}
+	if sum.Charset != "UTF-8" && sum.Rows > 0 {
+		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s is read as %s", clean(sum.Path), sum.Charset))
+	}
 	if sum.Rows > 0 && sum.Narratives == 0 {
 		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s has no narrative in any row; its occurrences are counted, but nothing can be found in them", clean(sum.Path)))
 	}

@@ -41,7 +41,8 @@ type FileSummary struct {
 	Narratives int    `json:"narratives"` // usable narratives among the occurrences read
 	Dated      int    `json:"dated"`      // occurrences read with a date
 
-	Map *ingest.Map `json:"-"`
+	Charset string      `json:"-"` // what the file's text was decoded from
+	Map     *ingest.Map `json:"-"`
 	// Sources names the sources that the rows belong to, in order of first
 	// appearance, at most the first few.
 	Sources []string `json:"-"`
@@ -75,7 +76,9 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	defer f.Close()
 	sum.Map = f.Map()
 	l := &loading{c: c, file: f, opts: opts, sum: &sum}
-	if err := l.run(ctx, x); err != nil {
+	err = l.run(ctx, x)
+	sum.Charset = f.Charset()
+	if err != nil {
 		return sum, fmt.Errorf("load %s: %w", path, err)
 	}
 	return sum, nil
