@@ -17,6 +17,7 @@ type format struct {
 // formats are tried in this order; any text at all may be a table.
 var formats = []format{
 	{"json", looksJSON, newJSONReader},
+	{"xml", looksXML, newXMLReader},
 	{"csv", func([]byte) bool { return true }, newDelimitedReader},
 }
 
@@ -71,9 +72,10 @@ var signatures = []signature{
 // pages are first characters of text that is no table of reports.
 var pages = []signature{
 	{0, "<!DOCTYPE html", "a web page", "download the table itself"},
+	{0, "<!DOCTYPE HTML", "a web page", "download the table itself"},
 	{0, "<!doctype html", "a web page", "download the table itself"},
 	{0, "<html", "a web page", "download the table itself"},
-	{0, "<", "XML or a web page", asTable},
+	{0, "<HTML", "a web page", "download the table itself"},
 }
 
 // refuse returns an error that says what a file is that cannot hold a table

@@ -2,6 +2,7 @@ package ingest
 
 import (
 	_ "embed"
+	"regexp"
 	"strings"
 	"sync"
 	"unicode"
@@ -49,10 +50,13 @@ func squeeze(header string) string {
 	}, strings.ReplaceAll(header, "#", "no"))
 }
 
+// repeatNumber is the number of a repeated column.
+var repeatNumber = regexp.MustCompile(` \(\d+\)$`)
+
 // lookupHeader is the field of a header, or "", and whether it yields to any
 // other column. Where columns are numbered, the first is the one meant.
 func lookupHeader(header string) (field string, yields bool) {
-	word := squeeze(header)
+	word := squeeze(repeatNumber.ReplaceAllString(header, ""))
 	field = headerFields()[word]
 	if field == "" {
 		field = headerFields()[strings.TrimSuffix(word, "1")]
