@@ -2,8 +2,10 @@ package ingest
 
 import (
 	"bytes"
+	"encoding/json"
 	"fmt"
 	"io"
+	"strings"
 
 	"catena/ingest/corpus"
 )
@@ -16,6 +18,8 @@ type jsonReader struct {
 	table *columnTable
 	shape jsonShape
 	after bool // the array has ended
+
+	wrapped bool // the array stands inside an object, of which the rest is passed over
 }
 
 // jsonShape is how the objects stand in the file.
@@ -31,8 +35,82 @@ func newJSONReader(w *window, lim limits) (rowReader, error) {
 	j := &jsonReader{w: w, lim: lim, table: newColumnTable(), shape: sniffJSON(w.bytes())}
 	if j.shape == inArray {
 		w.take(len(w.bytes()) - len(bytes.TrimLeft(w.bytes(), jsonSpace)) + 1)
+	} else if at := wrappedList(w.bytes()); at > 0 {
+		j.shape, j.wrapped = inArray, true
+		w.take(at)
 	}
 	return j, nil
+}
+
+// wrappedList finds a list of records inside an object that is none itself,
+// as in {"count": 2, "results": [{"id": ...}, ...]}, and returns where its
+// first element begins, or 0. A file of one object a line has none.
+func wrappedList(head []byte) int {
+	n, _ := lineEnd(head)
+	first := jsonText{s: string(head[:n])}
+	if rest := bytes.TrimLeft(head[n:], jsonSpace); len(rest) > 0 && first.skip() == nil && first.end() == nil {
+		return 0
+	}
+	d := json.NewDecoder(bytes.NewReader(head))
+	type open struct {
+		object bool
+		key    string // of the value at hand
+		named  bool   // key has been read, its value has not
+	}
+	var path []open
+	candidate := 0 // where the list begins whose first element is being read
+	for depth := 0; len(path) < maxDepth; depth = len(path) {
+		token, err := d.Token()
+		if err != nil {
+			return 0
+		}
+		var top *open
+		if depth > 0 {
+			top = &path[depth-1]
+		}
+		switch t := token.(type) {
+		case json.Delim:
+			switch t {
+			case '{', '[':
+				list := t == '[' && depth > 0 && top.object && recordKeys[top.key] == ""
+				if top != nil {
+					top.named = false
+				}
+				path = append(path, open{object: t == '{'})
+				if list {
+					candidate = int(d.InputOffset())
+				}
+			default:
+				path = path[:depth-1]
+			}
+		default:
+			if !top.object {
+				continue
+			}
+			if top.named {
+				top.named = false
+				continue
+			}
+			top.key, top.named = token.(string), true
+			if !recordMaking(top.key) {
+				continue
+			}
+			if depth < 3 || path[depth-2].object || candidate == 0 {
+				return 0 // a record that is not in a list
+			}
+			return candidate
+		}
+	}
+	return 0
+}
+
+// recordMaking tells whether a key is one that makes a record usable.
+func recordMaking(key string) bool {
+	field := recordKeys[key]
+	if field == "" {
+		field, _ = lookupHeader(key)
+	}
+	return field == "id" || field == "date" || field == toNarratives || strings.HasPrefix(field, toNarrative)
 }
 
 // jsonSpace is the white space of RFC 8259.
@@ -128,6 +206,8 @@ func (j *jsonReader) element() (row, error) {
 		return row{}, err
 	}
 	switch {
+	case j.after && j.wrapped:
+		return row{}, j.passOver()
 	case j.after:
 		return j.rest("more text after the end of the array")
 	case j.shape == inArray && first == ']':
@@ -199,6 +279,20 @@ func (j *jsonReader) spoolElement(r row, scan *elementScan, size int, done bool)
 		j.after = true
 	}
 	return r, err
+}
+
+// passOver reads to the end of the file.
+func (j *jsonReader) passOver() error {
+	for {
+		j.w.take(len(j.w.bytes()))
+		if j.w.more() {
+			continue
+		}
+		if err := j.w.fault(); err != nil {
+			return err
+		}
+		return io.EOF
+	}
 }
 
 // rest sets all the remaining bytes aside as one row: behind a fault between

@@ -29,6 +29,10 @@ func TestJSONRows(t *testing.T) {
 			"1@1 A\n2@2 ! broken JSON: the value that begins here never ends; set aside from here to the end of the file\n"},
 		{"text behind the array", "[{\"id\":\"A\"}]\n{\"id\":\"B\"}\n", "1@1 A\n2@2 ! more text after the end of the array; set aside from here to the end of the file\n"},
 		{"empty array", "[]", ""},
+		{"list in an object", "{\"count\": 2, \"links\": {\"next\": null}, \"results\": [\n{\"id\":\"A\"},\n{\"id\":\"B\"}\n], \"more\": false}\n", "1@2 A\n2@3 B\n"},
+		{"list deeper in objects", "{\"data\":{\"items\":[{\"ref\":{\"x\":1},\"id\":\"A\"},{\"id\":\"B\"}]}}", "1@1 A\n2@1 B\n"},
+		{"one record with lists", "{\"people\":[{\"id\":1}],\"id\":\"A\"}\n{\"id\":\"B\"}\n", "1@1 A\n2@2 B\n"},
+		{"one record over lines", "{\n\"id\":\"A\",\n\"parts\":[{\"id\":\"x\"}]\n}\n", "1@1 A\n"},
 	}
 	for _, test := range tests {
 		t.Run(test.name, func(t *testing.T) {
