@@ -50,7 +50,7 @@ type signature struct {
 var signatures = []signature{
 	{0, "%PDF-", "a PDF document", "export the reports as CSV or JSON from where they were published"},
 	{0, "{\\rtf", "an RTF document", asTable},
-	{0, "PK\x03\x04", "a ZIP archive", "unpack it and load what is inside"},
+	{0, zipMagic, "an archive inside an archive, or a document that is one", "unpack it, or " + asTable},
 	{0, "PK\x05\x06", "an empty ZIP archive", "check that it was downloaded whole"},
 	{0, "\xD0\xCF\x11\xE0\xA1\xB1\x1A\xE1", "an old Office document", asTable},
 	{0, "\x89PNG", "a PNG picture", "load the reports themselves"},
@@ -99,11 +99,7 @@ func refuseAny(known []signature, head []byte) error {
 		if !bytes.HasPrefix(head[s.at:], []byte(s.bytes)) && (s.at > 0 || !bytes.HasPrefix(text, []byte(s.bytes))) {
 			continue
 		}
-		what, try := s.what, s.try
-		if s.bytes == "PK\x03\x04" && (bytes.Contains(head, []byte("xl/")) || bytes.Contains(head, []byte("[Content_Types].xml"))) {
-			what, try = "a spreadsheet or another Office document", asTable
-		}
-		return fmt.Errorf("%s, not a table of reports: %s", what, try)
+		return fmt.Errorf("%s, not a table of reports: %s", s.what, s.try)
 	}
 	return nil
 }

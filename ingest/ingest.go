@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"strings"
 	"sync/atomic"
 
@@ -22,6 +23,7 @@ type Options struct {
 	Dates    string // order of dates of three numbers: dmy, mdy, ymd, or "" to see from the values
 	MaxRow   int    // bytes of one row held in memory; 0 for DefaultMaxRow
 	SpoolDir string // where larger rows go, as temporary files; "" for the system's folder
+	Size     int64  // bytes of the stream, for progress; 0 where not known
 }
 
 // DefaultMaxRow is the row limit: a long final report is a few hundred
@@ -62,8 +64,8 @@ type File struct {
 	rows   int   // rows returned
 }
 
-// Open opens a file, or, for the path "-", the stream in, and finds out its
-// format and map. It refuses a folder, an empty file, a file that is no table
+// Open opens the stream in, called path, or, without one, the file at path,
+// and finds out its format and map. It refuses a folder, an empty file, a file that is no table
 // of reports, and a table whose columns or dates cannot be made out; the
 // error says what to try.
 func Open(ctx context.Context, path string, in io.Reader, opts Options) (*File, error) {
@@ -98,8 +100,12 @@ func (f *File) open(in io.Reader) error {
 	}
 	packed := bufio.NewReaderSize(in, windowSize)
 	head, _ := packed.Peek(windowSize)
+	lim := limits{f.opts.MaxRow, f.opts.SpoolDir}
+	if looksXLSX(head) {
+		return f.openWorkbook(packed, lim)
+	}
 	if err := refuse(head); err != nil {
-		return err
+		return noReports{err}
 	}
 	f.text = newCharsetReader(packed)
 	w := newWindow(f.text)
@@ -108,10 +114,9 @@ func (f *File) open(in io.Reader) error {
 		return err
 	}
 	if err := refuseText(w.bytes()); err != nil {
-		return err
+		return noReports{err}
 	}
 	format := formatOf(w.bytes())
-	lim := limits{f.opts.MaxRow, f.opts.SpoolDir}
 	if f.reader, err = format.open(w, lim); err != nil {
 		var spooled errSpooled
 		if errors.As(err, &spooled) {
@@ -125,9 +130,27 @@ func (f *File) open(in io.Reader) error {
 	return f.makeMap(format.name)
 }
 
+// openWorkbook reads a workbook as far as the end of the sample.
+func (f *File) openWorkbook(in io.Reader, lim limits) error {
+	book, err := newXLSXReader(in, lim)
+	if err != nil {
+		return err
+	}
+	f.closer = append(f.closer, book)
+	f.reader = book
+	if err := f.readSample(); err != nil {
+		return err
+	}
+	return f.makeMap("xlsx")
+}
+
 // input opens the path and undoes gzip, told by its first two bytes.
 func (f *File) input(in io.Reader) (io.Reader, error) {
-	if f.path != "-" {
+	f.size = f.opts.Size
+	if in == nil && f.path == "-" {
+		return nil, fmt.Errorf("nothing to read from")
+	}
+	if in == nil {
 		file, err := os.Open(f.path)
 		if err != nil {
 			return nil, plain(err)
@@ -144,9 +167,6 @@ func (f *File) input(in io.Reader) (io.Reader, error) {
 		}
 		in = file
 	}
-	if in == nil {
-		return nil, fmt.Errorf("nothing to read from")
-	}
 	f.disk = &countingReader{in: in}
 	buffered := bufio.NewReaderSize(f.disk, windowSize)
 	if magic, _ := buffered.Peek(2); string(magic) != "\x1F\x8B" {
@@ -156,8 +176,9 @@ func (f *File) input(in io.Reader) (io.Reader, error) {
 	if err != nil {
 		return nil, fmt.Errorf("unpack gzip: %w", err)
 	}
-	f.closer = append(f.closer, unpacked)
-	return unpacked, nil
+	bounded := &boundedReader{in: unpacked, packed: f.disk.n.Load}
+	f.closer = append(f.closer, bounded)
+	return bounded, nil
 }
 
 // plain drops the operation and path from an error of the file system; the
@@ -185,10 +206,11 @@ func begin(w *window) error {
 		if err := w.fault(); err != nil {
 			return err
 		}
-		if w.line == 1 {
-			return fmt.Errorf("an empty file: check that it was downloaded or exported whole")
+		what := "an empty file"
+		if w.line > 1 {
+			what = "a file of white space only"
 		}
-		return fmt.Errorf("a file of white space only: check that it was downloaded or exported whole")
+		return noReports{fmt.Errorf("%s: check that it was downloaded or exported whole", what)}
 	}
 	return nil
 }
@@ -213,12 +235,57 @@ func (f *File) readSample() error {
 // makeMap maps the columns and decides the order of dates.
 func (f *File) makeMap(format string) error {
 	names := f.reader.columns().names
-	f.mapper = newMapper(format, names)
+	f.mapper = newMapper(format, names, nil)
+	if format != "json" {
+		f.dropSharedIDs()
+	}
 	if !f.mapper.known() && (format != "json" || len(names) > 0) {
-		return fmt.Errorf("no column is known for an id, a date or a narrative among %s: name the columns as in an occurrence record (id, date, narrative)",
-			listNames(names))
+		return noReports{fmt.Errorf("no column is known for an id, a date or a narrative among %s: name the columns as in an occurrence record (id, date, narrative)",
+			listNames(names))}
 	}
 	return f.orderDates()
+}
+
+// dropSharedIDs maps anew where columns look like ids by their header and are none by
+// their values: one row in ten, or more, has the value of another row and
+// another narrative. Such rows are parts of one event (a recommendation each,
+// say) and must not be taken for revisions of one another.
+func (f *File) dropSharedIDs() {
+	shared := map[string]string{}
+	for {
+		id := slices.IndexFunc(f.mapper.plans, func(p plan) bool { return p.field == "id" })
+		if id < 0 {
+			return
+		}
+		texts := map[string]string{}
+		rows, clashes := 0, 0
+		for _, r := range f.sample {
+			value, text := "", ""
+			for _, c := range r.cells {
+				switch {
+				case c.column == id:
+					value = c.text
+				case c.column >= 0 && c.column < len(f.mapper.plans) && strings.HasPrefix(f.mapper.plans[c.column].field, narrativeOf):
+					text += c.text
+				}
+			}
+			if value == "" {
+				continue
+			}
+			rows++
+			if first, seen := texts[value]; seen && first != text {
+				clashes++
+			} else {
+				texts[value] = text
+			}
+		}
+		if clashes*10 < rows || clashes < 3 {
+			return
+		}
+		name := f.mapper.Columns[id].Column
+		shared[name] = fmt.Sprintf("no id: %d of %d rows share a value and tell something else", clashes, rows)
+		f.mapper = newMapper(f.mapper.format, f.reader.columns().names, shared)
+	}
 }
 
 // listNames writes the first few of a list of names.
@@ -275,13 +342,29 @@ func (f *File) Map() *Map { return &f.mapper.Map }
 
 // Charset names the character set that the rows read so far were decoded
 // from.
-func (f *File) Charset() string { return f.text.name }
+func (f *File) Charset() string {
+	if f.text == nil { // a workbook
+		return charsetUTF8
+	}
+	return f.text.name
+}
+
+// Unread names the sheets of a workbook that are not read.
+func (f *File) Unread() []string {
+	if x, ok := f.reader.(*xlsxReader); ok {
+		return x.others
+	}
+	return nil
+}
 
 // Header is the header row as read, nil for formats that have none. Set above
 // a row that was set aside, it makes that row a file again.
 func (f *File) Header() []byte {
-	if d, ok := f.reader.(*delimitedReader); ok {
-		return d.header
+	switch r := f.reader.(type) {
+	case *delimitedReader:
+		return r.header
+	case *xlsxReader:
+		return r.header
 	}
 	return nil
 }
@@ -328,7 +411,7 @@ func (f *File) read() (row, error) {
 		return row{}, f.fault
 	}
 	r, err := f.reader.next()
-	if err != nil && err != io.EOF {
+	if err != nil && err != io.EOF && f.window != nil {
 		err = fmt.Errorf("line %d: %w", f.window.line, err)
 	}
 	f.fault = err

@@ -168,8 +168,8 @@ func TestOpenRefuses(t *testing.T) {
 		{"long white space", strings.Repeat(" \n", windowSize), []string{"white space only"}},
 		{"packed nothing", zipped(t, ""), []string{"an empty file"}},
 		{"pdf", "%PDF-1.7\n1 0 obj", []string{"a PDF document", "CSV or JSON"}},
-		{"zip", "PK\x03\x04\x14\x00rest", []string{"a ZIP archive", "unpack"}},
-		{"xlsx", "PK\x03\x04\x14\x00[Content_Types].xml", []string{"spreadsheet", "save it as CSV"}},
+		{"zip", "PK\x03\x04\x14\x00rest", []string{"an archive", "unpack"}},
+		{"xlsx", "PK\x03\x04\x14\x00[Content_Types].xml", []string{"broken workbook", "as CSV"}},
 		{"png", "\x89PNG\r\n\x1a\n", []string{"a PNG picture"}},
 		{"rtf", `{\rtf1 text}`, []string{"an RTF document"}},
 		{"gzip twice", zipped(t, zipped(t, "id,date\n1,2019\n")), []string{"gzip inside gzip"}},
@@ -321,5 +321,31 @@ func TestCloseRemovesSpooledRowsNotReturned(t *testing.T) {
 	f.Close()
 	if left, _ := os.ReadDir(dir); len(left) != 0 {
 		t.Errorf("%d spooled rows after Close", len(left))
+	}
+}
+
+// Rows that share a value of the id column and tell something else are no
+// revisions of one another: each stands under an id of its own.
+func TestSharedIDIsNoID(t *testing.T) {
+	var b strings.Builder
+	b.WriteString("case no,narrative\n")
+	for i := range 40 {
+		fmt.Fprintf(&b, "C-%d,Advice number %d.\n", i/4, i)
+	}
+	items, m := readAll(t, b.String(), Options{})
+	ids := map[string]bool{}
+	for _, it := range items {
+		ids[it.Occurrence.ID] = true
+	}
+	if len(ids) != 40 || m.Columns[0].Field != "extra" || !strings.Contains(m.Columns[0].Note, "30 of 40 rows") {
+		t.Errorf("%d ids, column %+v", len(ids), m.Columns[0])
+	}
+	if got := items[5].Occurrence.Extra["case no"]; got != "C-1" {
+		t.Errorf("extra %q", got)
+	}
+	// two rows of one id are a row and its correction
+	_, m = readAll(t, "case no,narrative\nC-1,a\nC-1,b\nC-2,c\n", Options{})
+	if m.Columns[0].Field != "id" {
+		t.Errorf("column %+v", m.Columns[0])
 	}
 }

@@ -80,6 +80,7 @@ type mapper struct {
 	whole  bool // a column names the whole operation
 	plain  string
 	event  string // the kind of event where the rows do not say
+	shared map[string]string
 }
 
 // plan is what to do with a column's cells.
@@ -93,8 +94,10 @@ type plan struct {
 // newMapper maps the columns by their headers alone. In JSON the keys of the
 // record come before other words for the same field; else the first column
 // that means a field has it, before those that yield.
-func newMapper(format string, names []string) *mapper {
-	m := &mapper{format: format, taken: map[string]string{}, plain: plainKind}
+//
+// Columns among shared are extra, with the note given there.
+func newMapper(format string, names []string, shared map[string]string) *mapper {
+	m := &mapper{format: format, taken: map[string]string{}, plain: plainKind, shared: shared}
 	for _, name := range names {
 		p := m.meaning(name)
 		m.place = m.place || p.field == "place"
@@ -119,6 +122,9 @@ func newMapper(format string, names []string) *mapper {
 
 // meaning is what a header says by itself.
 func (m *mapper) meaning(name string) plan {
+	if m.shared[name] != "" {
+		return plan{field: toExtra}
+	}
 	if field := recordKeys[name]; field != "" && m.format == "json" {
 		return plan{field: field, exact: true}
 	}
@@ -132,12 +138,13 @@ func (m *mapper) meaning(name string) plan {
 func (m *mapper) extend(names []string) {
 	for _, name := range names[len(m.plans):] {
 		p := m.meaning(name)
-		note := ""
+		note := m.shared[name]
 		switch owner := m.taken[p.field]; {
 		case p.field == toDropped && !m.record:
 			p = plan{field: toExtra}
 		case p.field == toDropped:
 			note = "computed anew on loading"
+		case p.field == toExtra && note != "":
 		case p.field == toExtra && !p.exact:
 			note = "no field is known by this name"
 		case p.field == toNarrative:

@@ -110,8 +110,8 @@ func loadDemo(cmd *cobra.Command, g *globalOptions) error {
 			return err
 		}
 		sum, err := c.Load(cmd.Context(), "-", collection.LoadOptions{
-			Stdin: bytes.NewReader(data),
-			Name:  strings.TrimPrefix(name, "demo/"),
+			In:   bytes.NewReader(data),
+			Name: strings.TrimPrefix(name, "demo/"),
 			Progress: func(_ string, rows int, read, _ int64) {
 				bar.show("building the demo", read, int64(len(data)))
 			},

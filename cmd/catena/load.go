@@ -4,6 +4,7 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -29,9 +30,9 @@ func newLoadCommand(g *globalOptions) *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "load PATH...",
 		Short: "Read files of reports into the collection: store, tag and index them",
-		Long: `Reads files (CSV, TSV, JSON, NDJSON, each also gzipped), or standard input for
-"-". Columns become fields by the trade's usual header words; what fits no
-field is kept as extra. A row that cannot become an occurrence is set aside
+		Long: `Reads files (CSV, TSV, JSON, NDJSON, XML, XLSX, each also gzipped), ZIP archives
+and folders of them, or standard input for "-". Columns become
+fields by the trade's usual header words; what fits no field is kept as extra. A row that cannot become an occurrence is set aside
 with the reason, never dropped. Reading the same file again changes nothing.
 
 The summary counts, per file: rows read, and of these stored, unchanged,
@@ -68,67 +69,157 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 		return err
 	}
 	defer c.Close()
-	errOut := cmd.ErrOrStderr()
-	bar := newProgress(errOut)
-	defer bar.finish()
-	var sums []collection.FileSummary
-	failed := 0
+	l := &loader{cmd: cmd, o: o, c: c, bar: newProgress(cmd.ErrOrStderr())}
+	defer l.bar.finish()
 	for _, path := range paths {
-		begun := time.Now()
-		shown := 0
-		sum, err := c.Load(cmd.Context(), path, collection.LoadOptions{
-			Source: o.source, Dates: o.dates, Stdin: cmd.InOrStdin(),
-			Progress: func(path string, rows int, read, size int64) {
-				bar.show(filepath.Base(path), read, size)
-				bar.describe(fmt.Sprintf("%s: %d rows, %.0f a second", filepath.Base(path), rows, float64(rows)/time.Since(begun).Seconds()))
-			},
-			Aside: func(a *corpus.SetAside) {
-				if shown++; shown > maxAsideLines {
-					return
-				}
-				bar.finish()
-				fmt.Fprintf(errOut, "set aside: %s:%d: %s\n", clean(a.File), a.Line, clean(a.Reason))
-			},
-		})
-		bar.finish()
-		if shown > maxAsideLines {
-			fmt.Fprintf(errOut, "set aside: %d more rows of %s (catena export --what set-aside shows all)\n", shown-maxAsideLines, clean(path))
-		}
-		sums = append(sums, sum)
-		switch {
-		case err != nil && cmd.Context().Err() != nil:
-			printLoad(cmd, g, sums)
-			return cmd.Context().Err()
-		case err != nil:
-			// the other files are read all the same
-			fmt.Fprintf(errOut, "error: %v\n", err)
-			failed++
-		default:
-			tellSource(cmd, o, sum)
+		if err := l.path(path); err != nil {
+			printLoad(cmd, g, l.sums)
+			return err
 		}
 	}
-	if err := printLoad(cmd, g, sums); err != nil {
+	if err := printLoad(cmd, g, l.sums); err != nil {
 		return err
 	}
-	if failed > 0 {
-		return hint(fmt.Errorf("%d of %d files could not be read", failed, len(paths)), "the messages above say why; the other files are loaded")
+	if o.source == "" {
+		tellSources(cmd, l.sums)
 	}
-	return asideError(sums)
+	if l.failed > 0 {
+		return hint(fmt.Errorf("%d of %d files could not be read", l.failed, len(l.sums)), "the messages above say why; the other files are loaded")
+	}
+	return asideError(l.sums)
+}
+
+// loader loads paths one after another. A file that cannot be read does not
+// keep the others from being loaded.
+type loader struct {
+	cmd    *cobra.Command
+	o      *loadOptions
+	c      *collection.Collection
+	bar    *progress
+	sums   []collection.FileSummary
+	failed int
+}
+
+// path loads what a path stands for. An error ends the command.
+func (l *loader) path(path string) error {
+	inputs, err := ingest.FindInputs(l.cmd.Context(), path, l.cmd.InOrStdin(), os.TempDir())
+	if err != nil {
+		return l.fail(collection.FileSummary{Path: path}, err)
+	}
+	defer inputs.Close()
+	passed := 0
+	for _, in := range inputs.List {
+		sum, err := l.input(in)
+		switch {
+		case l.cmd.Context().Err() != nil:
+			l.sums = append(l.sums, sum)
+			return l.cmd.Context().Err()
+		case in.Found && errors.Is(err, ingest.ErrNoReports):
+			passed++
+			noteTo(l.cmd.ErrOrStderr())(fmt.Sprintf("passed over: %s", clean(strings.TrimPrefix(err.Error(), "open "))))
+		case err != nil:
+			if err := l.fail(sum, err); err != nil {
+				return err
+			}
+		default:
+			l.sums = append(l.sums, sum)
+			tellFile(l.cmd, sum)
+		}
+	}
+	if passed == len(inputs.List) {
+		return l.fail(collection.FileSummary{Path: path}, fmt.Errorf("open %q: no file of reports in it", path))
+	}
+	return nil
+}
+
+// fail tells an error and counts the file.
+func (l *loader) fail(sum collection.FileSummary, err error) error {
+	if ctx := l.cmd.Context().Err(); ctx != nil {
+		return ctx
+	}
+	fmt.Fprintf(l.cmd.ErrOrStderr(), "error: %s\n", clean(err.Error()))
+	l.sums = append(l.sums, sum)
+	l.failed++
+	return nil
+}
+
+func (l *loader) input(in ingest.Input) (collection.FileSummary, error) {
+	errOut := l.cmd.ErrOrStderr()
+	begun := time.Now()
+	shown := 0
+	stream, err := in.Reader()
+	if err != nil {
+		return collection.FileSummary{Path: in.Path}, fmt.Errorf("open %q: %w", in.Path, err)
+	}
+	opts := collection.LoadOptions{
+		Source: l.o.source, Dates: l.o.dates, Size: in.Size,
+		Progress: func(path string, rows int, read, size int64) {
+			l.bar.show(filepath.Base(path), read, size)
+			l.bar.describe(fmt.Sprintf("%s: %d rows, %.0f a second", filepath.Base(path), rows, float64(rows)/time.Since(begun).Seconds()))
+		},
+		Aside: func(a *corpus.SetAside) {
+			if shown++; shown > maxAsideLines {
+				return
+			}
+			l.bar.finish()
+			fmt.Fprintf(errOut, "set aside: %s:%d: %s\n", clean(a.File), a.Line, clean(a.Reason))
+		},
+	}
+	if stream != nil {
+		defer stream.Close()
+		opts.In = stream
+	}
+	sum, err := l.c.Load(l.cmd.Context(), in.Path, opts)
+	l.bar.finish()
+	if shown > maxAsideLines {
+		fmt.Fprintf(errOut, "set aside: %d more rows of %s (catena export --what set-aside shows all)\n", shown-maxAsideLines, clean(in.Path))
+	}
+	return sum, err
 }
 
 // maxAsideLines is how many set-aside rows of a file are told one by one.
 const maxAsideLines = 10
 
-// tellSource says how a file's source was named when the file does not say.
-func tellSource(cmd *cobra.Command, o *loadOptions, sum collection.FileSummary) {
-	if o.source == "" && slices.Contains(sum.Sources, sum.Map.Name) {
-		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s names no source; its occurrences stand under %q (name them with --source)", clean(sum.Path), sum.Map.Name))
+// tellFile says what a person should know of how a file was read.
+func tellFile(cmd *cobra.Command, sum collection.FileSummary) {
+	note := func(format string, args ...any) {
+		noteTo(cmd.ErrOrStderr())(clean(sum.Path) + " " + fmt.Sprintf(format, args...))
 	}
 	if sum.Charset != "UTF-8" && sum.Rows > 0 {
-		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s is read as %s", clean(sum.Path), sum.Charset))
+		note("is read as %s", sum.Charset)
+	}
+	if len(sum.Unread) > 0 {
+		note("has other sheets that are not read: %s", clean(strings.Join(sum.Unread, ", ")))
 	}
 	if sum.Rows > 0 && sum.Narratives == 0 {
-		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s has no narrative in any row; its occurrences are counted, but nothing can be found in them", clean(sum.Path)))
+		note("has no narrative in any row; its occurrences are counted, but nothing can be found in them")
+	}
+}
+
+// tellSources says, once for each, how sources were named that the files do
+// not name.
+func tellSources(cmd *cobra.Command, sums []collection.FileSummary) {
+	var names []string
+	files := map[string][]string{}
+	for _, sum := range sums {
+		if sum.Map == nil || !slices.Contains(sum.Sources, sum.Map.Name) {
+			continue
+		}
+		if name := sum.Map.Name; files[name] == nil {
+			names = append(names, name)
+		}
+		files[sum.Map.Name] = append(files[sum.Map.Name], clean(filepath.Base(sum.Path)))
+	}
+	for _, name := range names {
+		many, verb, their := files[name], "names", "its"
+		if len(many) > 1 {
+			verb, their = "name", "their"
+		}
+		shown := strings.Join(many[:min(3, len(many))], ", ")
+		if len(many) > 3 {
+			shown += fmt.Sprintf(" and %d more", len(many)-3)
+		}
+		noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s %s no source; %s occurrences stand under %q (name them with --source)", shown, verb, their, name))
 	}
 }
 
@@ -151,13 +242,18 @@ func printLoad(cmd *cobra.Command, g *globalOptions, sums []collection.FileSumma
 		}
 		return e.Encode(map[string]any{"files": sums})
 	}
-	t := &table.Table{Title: "loaded", Columns: []table.Column{{Name: "file"}}}
+	folder := sharedFolder(sums)
+	title := "loaded"
+	if folder != "" {
+		title = "loaded from " + folder
+	}
+	t := &table.Table{Title: title, Columns: []table.Column{{Name: "file"}}}
 	for _, name := range []string{"rows", "stored", "unchanged", "revised", "set_aside", "narratives", "dated"} {
 		t.Columns = append(t.Columns, table.Column{Name: name, Unit: "count"})
 	}
 	nothing := true
 	for _, s := range sums {
-		t.Rows = append(t.Rows, []table.Cell{s.Path, s.Rows, s.Stored, s.Unchanged, s.Revised, s.SetAside, s.Narratives, s.Dated})
+		t.Rows = append(t.Rows, []table.Cell{strings.TrimPrefix(s.Path, folder), s.Rows, s.Stored, s.Unchanged, s.Revised, s.SetAside, s.Narratives, s.Dated})
 		nothing = nothing && s.Stored+s.Revised == 0 && s.Rows > 0
 	}
 	if nothing && len(sums) > 0 {
@@ -166,24 +262,65 @@ func printLoad(cmd *cobra.Command, g *globalOptions, sums []collection.FileSumma
 	return writeTable(cmd, t, "text")
 }
 
+// sharedFolder is the folder, with its slash, that all files stand in; "" for
+// a single file or where there is none.
+func sharedFolder(sums []collection.FileSummary) string {
+	if len(sums) < 2 {
+		return ""
+	}
+	folder := sums[0].Path
+	for _, s := range sums {
+		for !strings.HasPrefix(s.Path, folder) {
+			folder = folder[:len(folder)-1]
+		}
+	}
+	return folder[:strings.LastIndexAny(folder, `/\`)+1]
+}
+
 // dryRun shows the map of each file and three of its records.
 func dryRun(cmd *cobra.Command, o *loadOptions, paths []string) error {
-	out := cmd.OutOrStdout()
 	for _, path := range paths {
-		f, err := ingest.Open(cmd.Context(), path, cmd.InOrStdin(), ingest.Options{Source: o.source, Dates: o.dates, SpoolDir: os.TempDir()})
+		inputs, err := ingest.FindInputs(cmd.Context(), path, cmd.InOrStdin(), os.TempDir())
 		if err != nil {
 			return err
 		}
-		err = showMap(cmd, f, path)
-		if err == nil {
-			fmt.Fprintf(out, "\nThe first records:\n")
-			err = showRecords(cmd, f)
+		for _, in := range inputs.List {
+			if err = dryRunInput(cmd, o, in); in.Found && errors.Is(err, ingest.ErrNoReports) {
+				noteTo(cmd.ErrOrStderr())(fmt.Sprintf("passed over: %s", clean(strings.TrimPrefix(err.Error(), "open "))))
+				err = nil
+			}
+			if err != nil {
+				break
+			}
 		}
-		if err = errors.Join(err, f.Close()); err != nil {
+		if err = errors.Join(err, inputs.Close()); err != nil {
 			return err
 		}
 	}
 	return nil
+}
+
+func dryRunInput(cmd *cobra.Command, o *loadOptions, in ingest.Input) error {
+	opts := ingest.Options{Source: o.source, Dates: o.dates, SpoolDir: os.TempDir(), Size: in.Size}
+	stream, err := in.Reader()
+	if err != nil {
+		return err
+	}
+	var from io.Reader
+	if stream != nil {
+		defer stream.Close()
+		from = stream
+	}
+	f, err := ingest.Open(cmd.Context(), in.Path, from, opts)
+	if err != nil {
+		return err
+	}
+	err = showMap(cmd, f, in.Path)
+	if err == nil {
+		fmt.Fprintf(cmd.OutOrStdout(), "\nThe first records:\n")
+		err = showRecords(cmd, f)
+	}
+	return errors.Join(err, f.Close())
 }
 
 func showMap(cmd *cobra.Command, f *ingest.File, path string) error {

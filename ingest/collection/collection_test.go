@@ -38,7 +38,7 @@ func openTo(t *testing.T, dir string, write bool) *Collection {
 
 func load(t *testing.T, c *Collection, text string) FileSummary {
 	t.Helper()
-	sum, err := c.Load(context.Background(), "-", LoadOptions{Stdin: strings.NewReader(text)})
+	sum, err := c.Load(context.Background(), "-", LoadOptions{In: strings.NewReader(text)})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -137,7 +137,7 @@ func TestBrokenInputKeepsWhatWasRead(t *testing.T) {
 	c := openTo(t, t.TempDir(), true)
 	text := strings.Repeat(" ", 5<<20) // beyond the sample that Open reads
 	broken := errors.New("the stick was pulled")
-	sum, err := c.Load(context.Background(), "-", LoadOptions{Stdin: io.MultiReader(strings.NewReader(reports(20)+text+"\n"), iotest.ErrReader(broken))})
+	sum, err := c.Load(context.Background(), "-", LoadOptions{In: io.MultiReader(strings.NewReader(reports(20)+text+"\n"), iotest.ErrReader(broken))})
 	if !errors.Is(err, broken) {
 		t.Errorf("error %v, want %v", err, broken)
 	}
@@ -151,7 +151,7 @@ func TestInterruptedLoadGoesOn(t *testing.T) {
 	dir := t.TempDir()
 	c := openTo(t, dir, true)
 	ctx, cancel := context.WithCancel(context.Background())
-	_, err := c.Load(ctx, "-", LoadOptions{Stdin: strings.NewReader(reports(3500)), Progress: func(_ string, rows int, _, _ int64) {
+	_, err := c.Load(ctx, "-", LoadOptions{In: strings.NewReader(reports(3500)), Progress: func(_ string, rows int, _, _ int64) {
 		if rows >= 1000 {
 			cancel()
 		}

@@ -18,10 +18,11 @@ import (
 
 // LoadOptions say how to read files.
 type LoadOptions struct {
-	Source string // names the source of all occurrences
-	Dates  string // order of dates of three numbers: dmy, mdy or ymd
-	Stdin  io.Reader
-	Name   string // what to call standard input where rows are traced back; "" for "-"
+	Source string    // names the source of all occurrences
+	Dates  string    // order of dates of three numbers: dmy, mdy or ymd
+	In     io.Reader // the stream to read; nil for the file at the path
+	Size   int64     // of the stream in bytes, 0 where not known
+	Name   string    // what to call the path where rows are traced back; "" for the path
 	// Progress is told, after each batch, how far the file has been read, in
 	// bytes on disk; size is 0 where it is not known.
 	Progress func(path string, rows int, read, size int64)
@@ -42,6 +43,7 @@ type FileSummary struct {
 	Dated      int    `json:"dated"`      // occurrences read with a date
 
 	Charset string      `json:"-"` // what the file's text was decoded from
+	Unread  []string    `json:"-"` // sheets of a workbook that are not read
 	Map     *ingest.Map `json:"-"`
 	// Sources names the sources that the rows belong to, in order of first
 	// appearance, at most the first few.
@@ -69,7 +71,7 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	if err := clearSpool(spool); err != nil {
 		return sum, err
 	}
-	f, err := ingest.Open(ctx, path, opts.Stdin, ingest.Options{Source: opts.Source, Dates: opts.Dates, SpoolDir: spool})
+	f, err := ingest.Open(ctx, path, opts.In, ingest.Options{Source: opts.Source, Dates: opts.Dates, SpoolDir: spool, Size: opts.Size})
 	if err != nil {
 		return sum, err
 	}
@@ -77,7 +79,7 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	sum.Map = f.Map()
 	l := &loading{c: c, file: f, opts: opts, sum: &sum}
 	err = l.run(ctx, x)
-	sum.Charset = f.Charset()
+	sum.Charset, sum.Unread = f.Charset(), f.Unread()
 	if err != nil {
 		return sum, fmt.Errorf("load %s: %w", path, err)
 	}
