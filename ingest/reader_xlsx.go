@@ -111,9 +111,7 @@ func (x *xlsxReader) pickSheet() error {
 	case err != nil:
 		return err
 	default:
-		for len(below) < len(names) {
-			below = append(below, "")
-		}
+		below = padded(below, len(names))
 		if twoHeaderRows(names, below) {
 			x.header = append(append(x.header, '\n'), asCSV(below)...)
 			names = joinHeaderRows(names, below)
@@ -194,21 +192,19 @@ func (x *xlsxReader) next() (row, error) {
 // row is a row of cells; its raw form is a line of CSV, so that with the
 // header above it a row that was set aside makes a file again.
 func (x *xlsxReader) row(texts []string) (row, error) {
+	texts = padded(texts, len(x.table.names))
 	r := row{line: x.line, raw: asCSV(texts)}
 	if len(r.raw) > x.lim.maxRow {
 		path, err := spoolBytes(x.lim.dir, r.raw)
 		r.spool, r.reason, r.raw = path, x.lim.tooLarge(int64(len(r.raw))), nil
 		return r, err
 	}
-	if r.reason = ragged(padded(texts, len(x.table.names)), len(x.table.names)); r.reason != "" {
+	if r.reason = ragged(texts, len(x.table.names)); r.reason != "" {
 		return r, nil
 	}
 	r.cells = make([]cell, len(x.table.names))
 	for i, name := range x.table.names {
-		text := ""
-		if i < len(texts) {
-			text = texts[i]
-		}
+		text := texts[i]
 		if !utf8.ValidString(text) {
 			r.reason, r.cells = "not UTF-8 in column "+name, nil
 			return r, nil
