@@ -8,23 +8,24 @@ import (
 // format is one kind of file that can be read.
 type format struct {
 	name string // begins the name of sources that do not name themselves
-	// looks tells whether a file that begins with these bytes, white space
-	// and byte-order mark cut off, is of the format.
-	looks func(head []byte) bool
+	// looks tells whether a file of this name that begins with these bytes,
+	// white space and byte-order mark cut off, is of the format.
+	looks func(path string, head []byte) bool
 	open  func(w *window, lim limits) (rowReader, error)
 }
 
 // formats are tried in this order; any text at all may be a table.
 var formats = []format{
-	{"json", looksJSON, newJSONReader},
-	{"xml", looksXML, newXMLReader},
-	{"csv", func([]byte) bool { return true }, newDelimitedReader},
+	{"json", func(_ string, head []byte) bool { return looksJSON(head) }, newJSONReader},
+	{"xml", func(_ string, head []byte) bool { return looksXML(head) }, newXMLReader},
+	{"text", looksReport, newTextReader},
+	{"csv", func(string, []byte) bool { return true }, newDelimitedReader},
 }
 
-// formatOf picks the format of a file that begins with head.
-func formatOf(head []byte) format {
+// formatOf picks the format of the file at path that begins with head.
+func formatOf(path string, head []byte) format {
 	for _, f := range formats {
-		if f.looks(head) {
+		if f.looks(path, head) {
 			return f
 		}
 	}

@@ -315,6 +315,34 @@ func elementsOf(text, name string, level int) (n int, ok bool) {
 	}
 }
 
+func FuzzReport(f *testing.F) {
+	for _, seed := range []string{"id: A\ndate: 2019\n\nThe engine quit.\n", "---\nid: A\n---\nx", "id:\n", "---\n", "a: b\n\n", "id: 1\nid: 2\r\n\r\n\xff"} {
+		f.Add(seed)
+	}
+	f.Fuzz(func(t *testing.T, text string) {
+		file, err := Open(context.Background(), "x.txt", strings.NewReader(text), Options{MaxRow: 2000, SpoolDir: t.TempDir()})
+		if err != nil {
+			return
+		}
+		defer file.Close()
+		if _, ok := file.reader.(*textReader); !ok {
+			t.Skip("no report")
+		}
+		items, err := drain(file)
+		if err != nil || len(items) != 1 {
+			t.Fatalf("%d rows, %v", len(items), err)
+		}
+		if it := items[0]; it.Occurrence != nil {
+			checkText(t, it)
+			for _, n := range it.Occurrence.Narratives {
+				if !strings.Contains(string(it.Raw), n.Text) && !strings.Contains(n.Text, "&") && !strings.Contains(string(it.Raw), "&") {
+					t.Fatalf("%q is not in %q", n.Text, it.Raw)
+				}
+			}
+		}
+	})
+}
+
 func FuzzDate(f *testing.F) {
 	for _, seed := range []string{"2014-12-31", "10-JAN-95", "Jan 10, 1995", "3/4/2021 10:11 PM", "201412", "2014-12-31T18:10:00Z", "0000-00-00", "1//2"} {
 		f.Add(seed, "dmy")

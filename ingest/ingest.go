@@ -116,7 +116,7 @@ func (f *File) open(in io.Reader) error {
 	if err := refuseText(w.bytes()); err != nil {
 		return noReports{err}
 	}
-	format := formatOf(w.bytes())
+	format := formatOf(f.path, w.bytes())
 	if f.reader, err = format.open(w, lim); err != nil {
 		var spooled errSpooled
 		if errors.As(err, &spooled) {
@@ -236,7 +236,7 @@ func (f *File) readSample() error {
 func (f *File) makeMap(format string) error {
 	names := f.reader.columns().names
 	f.mapper = newMapper(format, names, nil)
-	if format != "json" {
+	if format != "json" && format != "text" {
 		f.dropSharedIDs()
 	}
 	if !f.mapper.known() && (format != "json" || len(names) > 0) {

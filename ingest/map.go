@@ -98,6 +98,9 @@ type plan struct {
 // Columns among shared are extra, with the note given there.
 func newMapper(format string, names []string, shared map[string]string) *mapper {
 	m := &mapper{format: format, taken: map[string]string{}, plain: plainKind, shared: shared}
+	if format == "text" {
+		m.plain, m.event = "reporter", "report"
+	}
 	for _, name := range names {
 		p := m.meaning(name)
 		m.place = m.place || p.field == "place"
@@ -203,6 +206,9 @@ func (m *mapper) dateColumn() int {
 // sourceName names the source after the header. Records whose fields all go
 // by the record's own keys are "records", with whatever extra keys.
 func (m *mapper) sourceName(names []string) string {
+	if m.format == "text" { // whatever each of them has in its head
+		return "own-reports"
+	}
 	narrated, foreign := false, false
 	words := make([]string, len(names))
 	for i, name := range names {
