@@ -61,6 +61,9 @@ func lookupHeader(header string) (field string, yields bool) {
 	if field == "" {
 		field = headerFields()[strings.TrimSuffix(word, "1")]
 	}
+	if field == "" {
+		field = furtherField(word)
+	}
 	return strings.CutSuffix(field, "?")
 }
 

@@ -3,6 +3,7 @@ package ingest
 import (
 	"bufio"
 	"bytes"
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -347,6 +348,27 @@ func (f *File) Charset() string {
 		return charsetUTF8
 	}
 	return f.text.name
+}
+
+// Word is a word of a file that the record has no word for.
+type Word struct {
+	Field, Word string
+	Count       int
+}
+
+// Unknown lists words read so far that are kept as they are for want of a
+// word of the record, the most frequent first.
+func (f *File) Unknown() []Word {
+	var list []Word
+	for field, words := range f.mapper.unknown {
+		for w, n := range words {
+			list = append(list, Word{field, w, n})
+		}
+	}
+	slices.SortFunc(list, func(a, b Word) int {
+		return cmp.Or(cmp.Compare(b.Count, a.Count), cmp.Compare(a.Field, b.Field), cmp.Compare(a.Word, b.Word))
+	})
+	return list
 }
 
 // Unread names the sheets of a workbook that are not read.

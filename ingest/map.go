@@ -81,6 +81,8 @@ type mapper struct {
 	plain  string
 	event  string // the kind of event where the rows do not say
 	shared map[string]string
+
+	unknown map[string]map[string]int // field -> words that are no words of the record -> how often
 }
 
 // plan is what to do with a column's cells.
@@ -187,6 +189,22 @@ func shown(field string) string {
 	}
 	return field
 }
+
+// strange counts a word that is kept as it is.
+func (m *mapper) strange(field, word string) {
+	if m.unknown == nil {
+		m.unknown = map[string]map[string]int{}
+	}
+	if m.unknown[field] == nil {
+		m.unknown[field] = map[string]int{}
+	}
+	if n, seen := m.unknown[field][word]; seen || len(m.unknown[field]) < maxStrange {
+		m.unknown[field][word] = n + 1
+	}
+}
+
+// maxStrange bounds the words that are remembered.
+const maxStrange = 1000
 
 // known tells whether any column can make a row usable.
 func (m *mapper) known() bool {

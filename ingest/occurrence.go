@@ -3,6 +3,8 @@ package ingest
 import (
 	"crypto/sha256"
 	"encoding/hex"
+	"maps"
+	"slices"
 	"strings"
 
 	"catena/ingest/corpus"
@@ -16,12 +18,17 @@ type builder struct {
 	next  map[string]int // extra name -> number of its next repetition
 
 	city, state, rules, purpose string
+
+	craft   craftCells
+	exact   bool // craft holds the record's own keys
+	further map[int]*craftCells
+	hurt    injuryCounts
 }
 
 // occurrence follows the map. The reason tells why the row is set aside
 // instead. A source given overrides those that the rows name.
 func (m *mapper) occurrence(cells []cell, source string) (*corpus.Occurrence, string) {
-	b := builder{m: m, order: m.DateOrder}
+	b := builder{m: m, order: m.DateOrder, hurt: injuryCounts{-1, -1, -1}}
 	b.o.Narratives = []corpus.Narrative{}
 	for _, c := range cells {
 		if reason := b.cell(c); reason != "" {
@@ -29,6 +36,12 @@ func (m *mapper) occurrence(cells []cell, source string) (*corpus.Occurrence, st
 		}
 	}
 	b.join()
+	if reason := b.aircraft(); reason != "" {
+		return nil, reason
+	}
+	if b.o.Injury == "" {
+		b.o.Injury = b.hurt.worst()
+	}
 	if b.o.Event == "" {
 		b.o.Event = m.event
 	}
@@ -87,8 +100,23 @@ func (b *builder) cell(c cell) (reason string) {
 		b.extra(c.name, c.text)
 	case p.field == "date":
 		return b.date(c)
-	case p.field == "engines":
-		return b.engines(c)
+	case craftField(p.field) >= 0:
+		b.craft[craftField(p.field)] = c
+		b.exact = b.exact || p.exact
+	case strings.HasPrefix(p.field, "aircraft"):
+		n, of := splitFurther(p.field)
+		if b.further == nil {
+			b.further = map[int]*craftCells{}
+		}
+		if b.further[n] == nil {
+			b.further[n] = &craftCells{}
+		}
+		b.further[n][craftField(of)] = c
+	case strings.HasPrefix(p.field, "injured."):
+		b.hurt.add(p.field, c.text)
+		b.extra(c.name, strings.TrimSpace(c.text))
+	case p.field == "phase":
+		b.phase(c, p.exact)
 	case words[p.field] != nil:
 		b.word(p.field, target, c)
 	case target != nil && p.exact:
@@ -116,22 +144,12 @@ func (b *builder) field(name string) *string {
 		return &b.state
 	case "country":
 		return &b.o.Country
-	case "make":
-		return &b.o.Make
-	case "model":
-		return &b.o.Model
-	case "category":
-		return &b.o.Category
-	case "engine_type":
-		return &b.o.EngineType
 	case "operation":
 		return &b.o.Operation
 	case toRules:
 		return &b.rules
 	case toPurpose:
 		return &b.purpose
-	case "phase":
-		return &b.o.Phase
 	case "injury":
 		return &b.o.Injury
 	case "damage":
@@ -156,14 +174,49 @@ func (b *builder) date(c cell) (reason string) {
 	return ""
 }
 
-// engines reads the number of engines. What the number does not say, a list
-// or a known zero, is kept beside it.
-func (b *builder) engines(c cell) (reason string) {
-	n, whole, reason := parseEngines(c.text)
+// phase puts the code of the phase; a cell that says more is kept beside it.
+// The record's own key is taken as it stands where no code is known for it.
+func (b *builder) phase(c cell, exact bool) {
+	code, whole, known := phase(c.text)
+	switch {
+	case exact && (!known || code == strings.TrimSpace(c.text) || placeholder(c.text)):
+		b.o.Phase = c.text
+		return
+	case placeholder(c.text):
+		return
+	}
+	if b.o.Phase = code; !whole {
+		b.extra(c.name, strings.TrimSpace(c.text))
+	}
+	if !known {
+		b.m.strange("phase", code)
+	}
+}
+
+// aircraft puts the aircraft, the first beside the other fields.
+func (b *builder) aircraft() (reason string) {
+	list, more, reason := b.craft.aircraft(b.exact)
 	if reason != "" {
 		return reason
 	}
-	if b.o.Engines = n; !whole || n == 0 && !placeholder(c.text) {
+	numbers := slices.Sorted(maps.Keys(b.further))
+	for _, n := range numbers {
+		others, others2, reason := b.further[n].aircraft(false)
+		if reason != "" {
+			return reason
+		}
+		for _, a := range others {
+			if a != (corpus.Aircraft{}) {
+				list = append(list, a)
+			}
+		}
+		more = append(more, others2...)
+	}
+	b.o.Aircraft = list[0]
+	if len(list) > 1 {
+		b.o.Further = append(list[1:], b.o.Further...)
+	}
+	for _, c := range more {
 		b.extra(c.name, strings.TrimSpace(c.text))
 	}
 	return ""

@@ -1,11 +1,20 @@
 package ingest
 
 import (
+	"bytes"
+	_ "embed"
+	"encoding/csv"
 	"fmt"
 	"html"
 	"regexp"
 	"strconv"
 	"strings"
+	"sync"
+	"unicode"
+
+	"golang.org/x/text/runes"
+	"golang.org/x/text/transform"
+	"golang.org/x/text/unicode/norm"
 )
 
 // placeholders are cells that say "not known" (common practice, no source).
@@ -15,7 +24,7 @@ var placeholders = map[string]bool{
 	"N/A": true, "#N/A": true, "NA": true, "N.A": true, "NONE SUBMITTED": true, "NOT SUBMITTED": true,
 	"NOT APPLICABLE": true, "NOT AVAILABLE": true, "NOT REPORTED": true, "NOT PROVIDED": true, "NOT STATED": true,
 	"NO DATA": true, "NOT KNOWN": true, "UNKNOWN": true, "UNK": true, "UNDETERMINED": true, "UNSPECIFIED": true,
-	"UNREPORTED": true, "UNAVAILABLE": true, "BLANK": true, "TBD": true, "TO BE DETERMINED": true, "A DEFINIR": true,
+	"UNREPORTED": true, "UNAVAILABLE": true, "BLANK": true, "TBD": true, "TO BE DETERMINED": true, "NO AIRCRAFT": true, "A DEFINIR": true,
 }
 
 // placeholder tells whether a cell stands for nothing known. A text longer
@@ -52,6 +61,63 @@ var words = map[string]map[string]string{
 		"incident": "incident", "inc": "incident", "incidente": "incident",
 		"report": "report", "voluntaryreport": "report", "hazardreport": "report", "safetyreport": "report", "hazard": "report",
 	},
+}
+
+// categories are the words of the record for kinds of aircraft (common
+// practice, no source).
+var categories = map[string]string{
+	"airplane": "airplane", "aeroplane": "airplane", "air": "airplane", "plane": "airplane", "fixedwing": "airplane", "avion": "airplane", "aviao": "airplane",
+	"helicopter": "helicopter", "heli": "helicopter", "rotorcraft": "helicopter", "rotarywing": "helicopter", "helicoptero": "helicopter",
+	"glider": "glider", "gli": "glider", "sailplane": "glider", "planador": "glider", "motorglider": "motor-glider", "poweredglider": "motor-glider",
+	"balloon": "balloon", "ball": "balloon", "airship": "airship", "blimp": "airship",
+	"gyroplane": "gyroplane", "gyro": "gyroplane", "gyrocopter": "gyroplane", "autogyro": "gyroplane",
+	"weightshift": "weight-shift", "wsft": "weight-shift", "weightshiftcontrol": "weight-shift", "trike": "weight-shift",
+	"poweredparachute": "powered-parachute", "ppar": "powered-parachute", "ultralight": "ultralight", "ultr": "ultralight", "ultraleve": "ultralight",
+	"unmanned": "unmanned", "uas": "unmanned", "drone": "unmanned", "uav": "unmanned", "poweredlift": "powered-lift",
+}
+
+//go:embed phases.csv
+var phasesCSV []byte
+
+// phaseCodes maps squeezed words to the codes of the CICTT phase-of-flight
+// taxonomy; a code stands for itself.
+var phaseCodes = sync.OnceValue(func() map[string]string {
+	codes := map[string]string{"unk": "UNK"}
+	r := csv.NewReader(bytes.NewReader(phasesCSV))
+	rows, err := r.ReadAll()
+	if err != nil {
+		panic(err) // the file is part of the program
+	}
+	for _, row := range rows[1:] {
+		codes[squeeze(row[0])] = row[1]
+		codes[strings.ToLower(row[1])] = row[1]
+	}
+	return codes
+})
+
+// phase is the code of a cell. Of several phases it is the first that is
+// known; whole is false when the cell says more or other than the code. A
+// cell without a known phase stays as it is.
+func phase(cell string) (code string, whole, known bool) {
+	cell = strings.TrimSpace(cell)
+	if code := phaseCodes()[plainLetters(cell)]; code != "" {
+		return code, code == cell, true
+	}
+	for _, part := range strings.FieldsFunc(cell, func(r rune) bool { return r == ';' || r == ',' || r == '|' }) {
+		if code := phaseCodes()[plainLetters(part)]; code != "" {
+			return code, false, true
+		}
+	}
+	return cell, true, placeholder(cell)
+}
+
+// plainLetters squeezes a text and takes the accents of its letters off.
+func plainLetters(text string) string {
+	plain, _, err := transform.String(transform.Chain(norm.NFD, runes.Remove(runes.In(unicode.Mn)), norm.NFC), text)
+	if err != nil {
+		plain = text
+	}
+	return squeeze(plain)
 }
 
 // severity ranks the words of a field, the gravest first.

@@ -191,6 +191,16 @@ func tellFile(cmd *cobra.Command, sum collection.FileSummary) {
 	if len(sum.Unread) > 0 {
 		note("has other sheets that are not read: %s", clean(strings.Join(sum.Unread, ", ")))
 	}
+	if n := len(sum.Unknown); n > 0 {
+		var words []string
+		for _, w := range sum.Unknown[:min(n, 4)] {
+			words = append(words, fmt.Sprintf("%q (%d)", clean(w.Word), w.Count))
+		}
+		if n > 4 {
+			words = append(words, fmt.Sprintf("%d more", n-4))
+		}
+		note("has phases of flight without a standard code, kept as they are: %s", strings.Join(words, ", "))
+	}
 	if sum.Rows > 0 && sum.Narratives == 0 {
 		note("has no narrative in any row; its occurrences are counted, but nothing can be found in them")
 	}

@@ -42,9 +42,10 @@ type FileSummary struct {
 	Narratives int    `json:"narratives"` // usable narratives among the occurrences read
 	Dated      int    `json:"dated"`      // occurrences read with a date
 
-	Charset string      `json:"-"` // what the file's text was decoded from
-	Unread  []string    `json:"-"` // sheets of a workbook that are not read
-	Map     *ingest.Map `json:"-"`
+	Charset string        `json:"-"` // what the file's text was decoded from
+	Unread  []string      `json:"-"` // sheets of a workbook that are not read
+	Unknown []ingest.Word `json:"-"` // words kept for want of a word of the record
+	Map     *ingest.Map   `json:"-"`
 	// Sources names the sources that the rows belong to, in order of first
 	// appearance, at most the first few.
 	Sources []string `json:"-"`
@@ -79,7 +80,7 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	sum.Map = f.Map()
 	l := &loading{c: c, file: f, opts: opts, sum: &sum}
 	err = l.run(ctx, x)
-	sum.Charset, sum.Unread = f.Charset(), f.Unread()
+	sum.Charset, sum.Unread, sum.Unknown = f.Charset(), f.Unread(), f.Unknown()
 	if err != nil {
 		return sum, fmt.Errorf("load %s: %w", path, err)
 	}
