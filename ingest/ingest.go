@@ -25,6 +25,11 @@ type Options struct {
 	MaxRow   int    // bytes of one row held in memory; 0 for DefaultMaxRow
 	SpoolDir string // where larger rows go, as temporary files; "" for the system's folder
 	Size     int64  // bytes of the stream, for progress; 0 where not known
+
+	// Map is a person's map for the file; nil to see from the headers, or to
+	// take what Recall returns for the name that the automatic map has.
+	Map    *MapFile
+	Recall func(name string) (*MapFile, error)
 }
 
 // DefaultMaxRow is the row limit: a long final report is a few hundred
@@ -60,9 +65,10 @@ type File struct {
 	window *window
 	reader rowReader
 	mapper *mapper
-	sample []row // rows read by Open and not yet returned
-	fault  error // what ended the reading
-	rows   int   // rows returned
+	header string // names the header: what the automatic map calls the source
+	sample []row  // rows read by Open and not yet returned
+	fault  error  // what ended the reading
+	rows   int    // rows returned
 }
 
 // Open opens the stream in, called path, or, without one, the file at path,
@@ -237,11 +243,29 @@ func (f *File) readSample() error {
 func (f *File) makeMap(format string) error {
 	names := f.reader.columns().names
 	f.mapper = newMapper(format, names, nil)
-	if format != "json" && format != "text" {
+	f.header = f.mapper.Name
+	told := f.opts.Map
+	if told == nil && f.opts.Recall != nil {
+		var err error
+		if told, err = f.opts.Recall(f.header); err != nil {
+			return err
+		}
+	}
+	switch {
+	case told != nil:
+		if err := told.covers(names); err != nil {
+			return err
+		}
+		f.mapper = mapWith(format, names, nil, told)
+		if f.opts.Dates == "" {
+			f.opts.Dates = told.Dates
+		}
+	case format != "json" && format != "text":
 		f.dropSharedIDs()
+		f.mapByValues()
 	}
 	if !f.mapper.known() && (format != "json" || len(names) > 0) {
-		return noReports{fmt.Errorf("no column is known for an id, a date or a narrative among %s: name the columns as in an occurrence record (id, date, narrative)",
+		return noReports{fmt.Errorf("no column is known for an id, a date or a narrative among %s: name the columns as in an occurrence record (id, date, narrative), or say with --map which is which (--write-map writes one to correct)",
 			listNames(names))}
 	}
 	return f.orderDates()
@@ -288,6 +312,54 @@ func (f *File) dropSharedIDs() {
 		f.mapper = newMapper(f.mapper.format, f.reader.columns().names, shared)
 	}
 }
+
+// mapByValues finds a narrative and a date, where no header names one, by
+// what stands in the columns: long texts, and dates in nine rows of ten.
+func (f *File) mapByValues() {
+	kinds := map[string]int{}
+	for _, p := range f.mapper.plans {
+		field, _, _ := strings.Cut(p.field, ".")
+		kinds[field]++
+	}
+	type column struct{ filled, dates, length int }
+	columns := make([]column, len(f.mapper.plans))
+	for _, r := range f.sample {
+		for _, c := range r.cells {
+			text := strings.TrimSpace(c.text)
+			if c.column < 0 || c.column >= len(columns) || placeholder(text) {
+				continue
+			}
+			at := &columns[c.column]
+			at.filled++
+			at.length += len(text)
+			if p, ok := partsOf(text); ok && (p.n == 3 || p.month > 0) {
+				at.dates++
+			}
+		}
+	}
+	longest, dated := -1, -1
+	for i, c := range columns {
+		if f.mapper.plans[i].field != toExtra || c.filled == 0 {
+			continue
+		}
+		if c.length/c.filled >= longText && (longest < 0 || c.length > columns[longest].length) {
+			longest = i
+		}
+		if c.dates*10 >= c.filled*9 && c.filled*2 >= len(f.sample) && dated < 0 {
+			dated = i
+		}
+	}
+	if kinds["narrative"] == 0 && longest >= 0 {
+		f.mapper.assign(longest, narrativeOf+f.mapper.plain, "by its long texts")
+	}
+	if kinds["date"] == 0 && dated >= 0 {
+		f.mapper.assign(dated, "date", "by its values")
+	}
+}
+
+// longText is how long the texts of a column are, in bytes on average, to be
+// taken for narratives.
+const longText = 150
 
 // listNames writes the first few of a list of names.
 func listNames(names []string) string {
@@ -378,6 +450,10 @@ func (f *File) Unread() []string {
 	}
 	return nil
 }
+
+// HeaderName names the file's header, the same for every file of the same
+// columns, whatever map is used.
+func (f *File) HeaderName() string { return f.header }
 
 // Header is the header row as read, nil for formats that have none. Set above
 // a row that was set aside, it makes that row a file again.

@@ -19,6 +19,9 @@ type Map struct {
 	// with any row; they are added as they come.
 	Columns []ColumnMap
 
+	// Told says that a person wrote the map.
+	Told bool
+
 	// DateOrder is how dates of three numbers are read: dmy, mdy or ymd, and
 	// "" where the file needs no order.
 	DateOrder string
@@ -81,6 +84,7 @@ type mapper struct {
 	plain  string
 	event  string // the kind of event where the rows do not say
 	shared map[string]string
+	told   *MapFile
 
 	unknown map[string]map[string]int // field -> words that are no words of the record -> how often
 }
@@ -99,7 +103,12 @@ type plan struct {
 //
 // Columns among shared are extra, with the note given there.
 func newMapper(format string, names []string, shared map[string]string) *mapper {
-	m := &mapper{format: format, taken: map[string]string{}, plain: plainKind, shared: shared}
+	return mapWith(format, names, shared, nil)
+}
+
+// mapWith is newMapper with a person's map over it.
+func mapWith(format string, names []string, shared map[string]string, told *MapFile) *mapper {
+	m := &mapper{format: format, taken: map[string]string{}, plain: plainKind, shared: shared, told: told}
 	if format == "text" {
 		m.plain, m.event = "reporter", "report"
 	}
@@ -122,11 +131,22 @@ func newMapper(format string, names []string, shared map[string]string) *mapper 
 	}
 	m.extend(names)
 	m.Name = m.sourceName(names)
+	if m.Told = told != nil; m.Told && told.Source != "" {
+		m.Name = told.Source
+	}
 	return m
 }
 
 // meaning is what a header says by itself.
 func (m *mapper) meaning(name string) plan {
+	if m.told != nil {
+		if field := m.told.fields[name]; field == toNarrative {
+			return plan{field: narrativeOf + m.plain}
+		} else if field != "" {
+			return plan{field: field}
+		}
+		return plan{field: toExtra}
+	}
 	if m.shared[name] != "" {
 		return plan{field: toExtra}
 	}
@@ -149,7 +169,7 @@ func (m *mapper) extend(names []string) {
 			p = plan{field: toExtra}
 		case p.field == toDropped:
 			note = "computed anew on loading"
-		case p.field == toExtra && note != "":
+		case p.field == toExtra && (note != "" || m.told != nil):
 		case p.field == toExtra && !p.exact:
 			note = "no field is known by this name"
 		case p.field == toNarrative:
@@ -169,6 +189,13 @@ func (m *mapper) extend(names []string) {
 		m.plans = append(m.plans, p)
 		m.Columns = append(m.Columns, ColumnMap{name, shown(p.field), note})
 	}
+}
+
+// assign gives a column that is extra a field.
+func (m *mapper) assign(column int, field, note string) {
+	m.plans[column] = plan{field: field}
+	m.taken[field] = m.Columns[column].Column
+	m.Columns[column].Field, m.Columns[column].Note = shown(field), note
 }
 
 // joinedNotes tell of the fields that several columns make together.

@@ -21,8 +21,11 @@ import (
 )
 
 type loadOptions struct {
-	source, dates string
-	dryRun        bool
+	source, dates     string
+	mapPath, writeMap string
+	dryRun            bool
+
+	file *ingest.MapFile // read from mapPath
 }
 
 func newLoadCommand(g *globalOptions) *cobra.Command {
@@ -35,11 +38,17 @@ and folders of them, or standard input for "-". Columns become
 fields by the trade's usual header words; what fits no field is kept as extra. A row that cannot become an occurrence is set aside
 with the reason, never dropped. Reading the same file again changes nothing.
 
+Where columns are taken for the wrong fields, write the map (--write-map),
+correct it, and load with --map; it is remembered for files of the same
+columns.
+
 The summary counts, per file: rows read, and of these stored, unchanged,
 revised (a known reference with new content) and set aside; then the
 occurrences with a usable narrative and with a date.`,
 		Example: `  catena load reports-2024.csv
   catena load --dry-run reports-2024.csv        see how its columns would be read
+  catena load --dry-run --write-map our.toml reports-2024.csv
+  catena load --map our.toml reports-2024.csv
   zcat reports.ndjson.gz | catena load --source our-base -`,
 		Args: args(cobra.MinimumNArgs(1)),
 		RunE: func(cmd *cobra.Command, paths []string) error { return runLoad(cmd, g, o, paths) },
@@ -50,6 +59,8 @@ occurrences with a usable narrative and with a date.`,
 	g.addAs(f, "text", "text or json")
 	f.StringVar(&o.source, "source", "", "name the source of these occurrences")
 	f.StringVar(&o.dates, "dates", "", "order of dates of three numbers: dmy, mdy or ymd")
+	f.StringVar(&o.mapPath, "map", "", "file that says which field each column is; \"-\" forgets the remembered one")
+	f.StringVar(&o.writeMap, "write-map", "", "write how the columns are read to a file, to correct and use with --map")
 	f.BoolVar(&o.dryRun, "dry-run", false, "show how columns would be read and three records; write nothing")
 	return cmd
 }
@@ -61,8 +72,13 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 	if o.dates != "" && !slices.Contains([]string{"dmy", "mdy", "ymd"}, o.dates) {
 		return usage(cmd, "--dates: %q is none of dmy, mdy and ymd", o.dates)
 	}
-	if o.dryRun {
-		return dryRun(cmd, o, paths)
+	if err := o.readMap(); err != nil {
+		return err
+	}
+	if o.dryRun || o.writeMap != "" {
+		if err := dryRun(cmd, g, o, paths); err != nil || o.dryRun {
+			return err
+		}
 	}
 	c, err := g.openToWrite(cmd, "")
 	if err != nil {
@@ -88,6 +104,29 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 	}
 	return asideError(l.sums)
 }
+
+// readMap reads the file of --map.
+func (o *loadOptions) readMap() error {
+	if o.mapPath == "" || o.mapPath == "-" {
+		return nil
+	}
+	info, err := os.Stat(o.mapPath)
+	if err != nil {
+		return fmt.Errorf("read the map: %w", err)
+	}
+	if info.Size() > maxMapBytes {
+		return fmt.Errorf("read the map: %s has %d bytes, more than the limit of %d", o.mapPath, info.Size(), maxMapBytes)
+	}
+	text, err := os.ReadFile(o.mapPath)
+	if err != nil {
+		return fmt.Errorf("read the map: %w", err)
+	}
+	o.file, err = ingest.ParseMap(o.mapPath, text)
+	return err
+}
+
+// maxMapBytes is more than any map of ten thousand columns has.
+const maxMapBytes = 4 << 20
 
 // loader loads paths one after another. A file that cannot be read does not
 // keep the others from being loaded.
@@ -124,6 +163,9 @@ func (l *loader) path(path string) error {
 		default:
 			l.sums = append(l.sums, sum)
 			tellFile(l.cmd, sum)
+			if sum.Map.Told && l.o.file == nil {
+				noteTo(l.cmd.ErrOrStderr())(fmt.Sprintf("%s is read by the map that was given for files of these columns before (--map - forgets it)", clean(sum.Path)))
+			}
 		}
 	}
 	if passed == len(inputs.List) {
@@ -152,7 +194,7 @@ func (l *loader) input(in ingest.Input) (collection.FileSummary, error) {
 		return collection.FileSummary{Path: in.Path}, fmt.Errorf("open %q: %w", in.Path, err)
 	}
 	opts := collection.LoadOptions{
-		Source: l.o.source, Dates: l.o.dates, Size: in.Size,
+		Source: l.o.source, Dates: l.o.dates, Size: in.Size, Map: l.o.file, Forget: l.o.mapPath == "-",
 		Progress: func(path string, rows int, read, size int64) {
 			l.bar.show(filepath.Base(path), read, size)
 			l.bar.describe(fmt.Sprintf("%s: %d rows, %.0f a second", filepath.Base(path), rows, float64(rows)/time.Since(begun).Seconds()))
@@ -212,7 +254,7 @@ func tellSources(cmd *cobra.Command, sums []collection.FileSummary) {
 	var names []string
 	files := map[string][]string{}
 	for _, sum := range sums {
-		if sum.Map == nil || !slices.Contains(sum.Sources, sum.Map.Name) {
+		if sum.Map == nil || sum.Map.Told || !slices.Contains(sum.Sources, sum.Map.Name) {
 			continue
 		}
 		if name := sum.Map.Name; files[name] == nil {
@@ -272,10 +314,9 @@ func printLoad(cmd *cobra.Command, g *globalOptions, sums []collection.FileSumma
 	return writeTable(cmd, t, "text")
 }
 
-// sharedFolder is the folder, with its slash, that all files stand in; "" for
-// a single file or where there is none.
+// sharedFolder is the folder, with its slash, that all files stand in, or "".
 func sharedFolder(sums []collection.FileSummary) string {
-	if len(sums) < 2 {
+	if len(sums) == 0 {
 		return ""
 	}
 	folder := sums[0].Path
@@ -287,15 +328,29 @@ func sharedFolder(sums []collection.FileSummary) string {
 	return folder[:strings.LastIndexAny(folder, `/\`)+1]
 }
 
-// dryRun shows the map of each file and three of its records.
-func dryRun(cmd *cobra.Command, o *loadOptions, paths []string) error {
+// dryRun shows the map of each file and three of its records, or only writes
+// the map.
+func dryRun(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []string) error {
+	opts := ingest.Options{Source: o.source, Dates: o.dates, SpoolDir: os.TempDir(), Map: o.file}
+	if exists(g.at) && o.mapPath == "" {
+		c, err := g.open(cmd)
+		if err != nil {
+			return err
+		}
+		defer c.Close()
+		opts.Recall = c.Recall(cmd.Context())
+	}
+	maps := 0
 	for _, path := range paths {
 		inputs, err := ingest.FindInputs(cmd.Context(), path, cmd.InOrStdin(), os.TempDir())
 		if err != nil {
 			return err
 		}
+		if o.writeMap != "" && !o.dryRun && path == "-" {
+			return hint(fmt.Errorf("--write-map: standard input cannot be read twice"), "add --dry-run, then load with --map")
+		}
 		for _, in := range inputs.List {
-			if err = dryRunInput(cmd, o, in); in.Found && errors.Is(err, ingest.ErrNoReports) {
+			if err = dryRunInput(cmd, o, in, opts, &maps); in.Found && errors.Is(err, ingest.ErrNoReports) {
 				noteTo(cmd.ErrOrStderr())(fmt.Sprintf("passed over: %s", clean(strings.TrimPrefix(err.Error(), "open "))))
 				err = nil
 			}
@@ -310,8 +365,8 @@ func dryRun(cmd *cobra.Command, o *loadOptions, paths []string) error {
 	return nil
 }
 
-func dryRunInput(cmd *cobra.Command, o *loadOptions, in ingest.Input) error {
-	opts := ingest.Options{Source: o.source, Dates: o.dates, SpoolDir: os.TempDir(), Size: in.Size}
+func dryRunInput(cmd *cobra.Command, o *loadOptions, in ingest.Input, opts ingest.Options, maps *int) error {
+	opts.Size = in.Size
 	stream, err := in.Reader()
 	if err != nil {
 		return err
@@ -325,12 +380,41 @@ func dryRunInput(cmd *cobra.Command, o *loadOptions, in ingest.Input) error {
 	if err != nil {
 		return err
 	}
-	err = showMap(cmd, f, in.Path)
-	if err == nil {
-		fmt.Fprintf(cmd.OutOrStdout(), "\nThe first records:\n")
-		err = showRecords(cmd, f)
+	defer f.Close()
+	if o.writeMap != "" {
+		if *maps++; *maps > 1 {
+			return hint(fmt.Errorf("--write-map: one map for one kind of file, and there are several files"), "name one of them")
+		}
+		if err := writeMap(cmd, f, o.writeMap); err != nil {
+			return err
+		}
 	}
-	return errors.Join(err, f.Close())
+	if !o.dryRun {
+		return nil
+	}
+	if err := showMap(cmd, f, in.Path); err != nil {
+		return err
+	}
+	fmt.Fprintf(cmd.OutOrStdout(), "\nThe first records:\n")
+	return showRecords(cmd, f)
+}
+
+// writeMap writes the map whole or not at all, and never over another file.
+func writeMap(cmd *cobra.Command, f *ingest.File, path string) error {
+	out, err := os.OpenFile(path, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o644)
+	if errors.Is(err, fs.ErrExist) {
+		return hint(fmt.Errorf("--write-map: %s is there already", path), "name another file, or remove it")
+	}
+	if err != nil {
+		return fmt.Errorf("--write-map: %w", err)
+	}
+	_, err = out.Write(f.TOML())
+	if err = errors.Join(err, out.Close()); err != nil {
+		os.Remove(path)
+		return fmt.Errorf("--write-map: %w", err)
+	}
+	noteTo(cmd.ErrOrStderr())(fmt.Sprintf("the map is in %s: correct it and load with --map %[1]s", clean(path)))
+	return nil
 }
 
 func showMap(cmd *cobra.Command, f *ingest.File, path string) error {

@@ -18,11 +18,13 @@ import (
 
 // LoadOptions say how to read files.
 type LoadOptions struct {
-	Source string    // names the source of all occurrences
-	Dates  string    // order of dates of three numbers: dmy, mdy or ymd
-	In     io.Reader // the stream to read; nil for the file at the path
-	Size   int64     // of the stream in bytes, 0 where not known
-	Name   string    // what to call the path where rows are traced back; "" for the path
+	Source string          // names the source of all occurrences
+	Dates  string          // order of dates of three numbers: dmy, mdy or ymd
+	In     io.Reader       // the stream to read; nil for the file at the path
+	Size   int64           // of the stream in bytes, 0 where not known
+	Map    *ingest.MapFile // a person's map, remembered for files of the same columns
+	Forget bool            // the remembered map
+	Name   string          // what to call the path where rows are traced back; "" for the path
 	// Progress is told, after each batch, how far the file has been read, in
 	// bytes on disk; size is 0 where it is not known.
 	Progress func(path string, rows int, read, size int64)
@@ -72,12 +74,19 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	if err := clearSpool(spool); err != nil {
 		return sum, err
 	}
-	f, err := ingest.Open(ctx, path, opts.In, ingest.Options{Source: opts.Source, Dates: opts.Dates, SpoolDir: spool, Size: opts.Size})
+	with := ingest.Options{Source: opts.Source, Dates: opts.Dates, SpoolDir: spool, Size: opts.Size, Map: opts.Map}
+	if !opts.Forget {
+		with.Recall = c.Recall(ctx)
+	}
+	f, err := ingest.Open(ctx, path, opts.In, with)
 	if err != nil {
 		return sum, err
 	}
 	defer f.Close()
 	sum.Map = f.Map()
+	if err := c.rememberMap(ctx, f.HeaderName(), opts); err != nil {
+		return sum, err
+	}
 	l := &loading{c: c, file: f, opts: opts, sum: &sum}
 	err = l.run(ctx, x)
 	sum.Charset, sum.Unread, sum.Unknown = f.Charset(), f.Unread(), f.Unknown()
@@ -85,6 +94,31 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 		return sum, fmt.Errorf("load %s: %w", path, err)
 	}
 	return sum, nil
+}
+
+// mapState names the state that holds the map for a header.
+func mapState(header string) string { return "map " + header }
+
+// Recall returns what finds the remembered map for a header, nil for none.
+func (c *Collection) Recall(ctx context.Context) func(string) (*ingest.MapFile, error) {
+	return func(header string) (*ingest.MapFile, error) {
+		text, err := c.Store.State(ctx, mapState(header))
+		if err != nil || text == "" {
+			return nil, err
+		}
+		return ingest.ParseMap("the map remembered for "+header, []byte(text))
+	}
+}
+
+// rememberMap keeps the map that a person gave, or forgets it.
+func (c *Collection) rememberMap(ctx context.Context, header string, opts LoadOptions) error {
+	switch {
+	case opts.Map != nil:
+		return c.Store.SetState(ctx, mapState(header), opts.Map.Text)
+	case opts.Forget:
+		return c.Store.SetState(ctx, mapState(header), "")
+	}
+	return nil
 }
 
 // clearSpool removes what a crash left behind.
