@@ -200,7 +200,7 @@ type asideLine struct {
 const maxAsideRaw = 16 << 20
 
 func exportSetAside(cmd *cobra.Command, c *collection.Collection, w io.Writer) error {
-	for a, err := range c.Store.EachSetAside(cmd.Context(), maxAsideRaw) {
+	for a, err := range c.Store.EachSetAside(cmd.Context(), 0, maxAsideRaw) {
 		if err != nil {
 			return err
 		}

@@ -23,7 +23,7 @@ import (
 type loadOptions struct {
 	source, dates     string
 	mapPath, writeMap string
-	dryRun            bool
+	dryRun, retry     bool
 
 	file *ingest.MapFile // read from mapPath
 }
@@ -50,7 +50,12 @@ occurrences with a usable narrative and with a date.`,
   catena load --dry-run --write-map our.toml reports-2024.csv
   catena load --map our.toml reports-2024.csv
   zcat reports.ndjson.gz | catena load --source our-base -`,
-		Args: args(cobra.MinimumNArgs(1)),
+		Args: args(func(cmd *cobra.Command, paths []string) error {
+			if o.retry {
+				return cobra.NoArgs(cmd, paths)
+			}
+			return cobra.MinimumNArgs(1)(cmd, paths)
+		}),
 		RunE: func(cmd *cobra.Command, paths []string) error { return runLoad(cmd, g, o, paths) },
 	}
 	f := cmd.Flags()
@@ -61,6 +66,7 @@ occurrences with a usable narrative and with a date.`,
 	f.StringVar(&o.dates, "dates", "", "order of dates of three numbers: dmy, mdy or ymd")
 	f.StringVar(&o.mapPath, "map", "", "file that says which field each column is; \"-\" forgets the remembered one")
 	f.StringVar(&o.writeMap, "write-map", "", "write how the columns are read to a file, to correct and use with --map")
+	f.BoolVar(&o.retry, "retry", false, "read the rows that were set aside again, with what --map, --dates or --source say now")
 	f.BoolVar(&o.dryRun, "dry-run", false, "show how columns would be read and three records; write nothing")
 	return cmd
 }
@@ -85,6 +91,9 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 		return err
 	}
 	defer c.Close()
+	if o.retry {
+		return retryAside(cmd, g, o, c)
+	}
 	l := &loader{cmd: cmd, o: o, c: c, bar: newProgress(cmd.ErrOrStderr())}
 	defer l.bar.finish()
 	for _, path := range paths {
@@ -103,6 +112,37 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 		return hint(fmt.Errorf("%d of %d files could not be read", l.failed, len(l.sums)), "the messages above say why; the other files are loaded")
 	}
 	return asideError(l.sums)
+}
+
+// retryAside reads the set-aside rows again.
+func retryAside(cmd *cobra.Command, g *globalOptions, o *loadOptions, c *collection.Collection) error {
+	shown := 0
+	sums, err := c.Retry(cmd.Context(), collection.LoadOptions{
+		Source: o.source, Dates: o.dates, Map: o.file,
+		Aside: func(a *corpus.SetAside) {
+			if shown++; shown <= maxAsideLines {
+				fmt.Fprintf(cmd.ErrOrStderr(), "still set aside: %s:%d: %s\n", clean(a.File), a.Line, clean(a.Reason))
+			}
+		},
+	})
+	if err != nil {
+		return err
+	}
+	if shown > maxAsideLines {
+		fmt.Fprintf(cmd.ErrOrStderr(), "still set aside: %d more rows (catena export --what set-aside shows all)\n", shown-maxAsideLines)
+	}
+	if len(sums) == 0 {
+		noteTo(cmd.ErrOrStderr())("no row is set aside")
+	}
+	for _, s := range sums {
+		if s.Charset != "UTF-8" {
+			noteTo(cmd.ErrOrStderr())(fmt.Sprintf("%s: some rows are read as %s", clean(s.Path), s.Charset))
+		}
+	}
+	if err := printLoad(cmd, g, sums); err != nil {
+		return err
+	}
+	return asideError(sums)
 }
 
 // readMap reads the file of --map.

@@ -88,6 +88,10 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 		return sum, err
 	}
 	l := &loading{c: c, file: f, opts: opts, sum: &sum}
+	l.how = store.Reading{Header: f.Header(), Dates: f.Map().DateOrder, Source: opts.Source}
+	if l.how.Header != nil { // else each row names its own columns
+		l.how.Fields = string(f.TOML())
+	}
 	err = l.run(ctx, x)
 	sum.Charset, sum.Unread, sum.Unknown = f.Charset(), f.Unread(), f.Unknown()
 	if err != nil {
@@ -137,10 +141,12 @@ func clearSpool(dir string) error {
 
 // loading is the state of one Load.
 type loading struct {
-	c    *Collection
-	file *ingest.File
-	opts LoadOptions
-	sum  *FileSummary
+	c     *Collection
+	file  *ingest.File
+	opts  LoadOptions
+	sum   *FileSummary
+	how   store.Reading
+	noted bool // how has been kept
 }
 
 // job is one row on its way. Whoever works on it closes done.
@@ -261,6 +267,10 @@ func (l *loading) write(ctx context.Context, order <-chan *job, feed chan<- []in
 			b.Rollback()
 			return err
 		}
+		if err := l.noteReading(b); err != nil {
+			b.Rollback()
+			return err
+		}
 		var written []indexed
 		var spools []string
 		sum := *l.sum
@@ -308,6 +318,20 @@ func (l *loading) write(ctx context.Context, order <-chan *job, feed chan<- []in
 		}
 	}
 	return nil
+}
+
+// noteReading keeps, with the first batch, what it takes to read rows of the
+// file again that are set aside.
+func (l *loading) noteReading(b *store.Batch) error {
+	if l.noted {
+		return nil
+	}
+	l.noted = true
+	path := l.sum.Path
+	if l.opts.Name != "" {
+		path = l.opts.Name
+	}
+	return b.Reading(path, l.sum.Map.Name, l.how)
 }
 
 // writeOne stores one row and counts it; it returns what the index must learn.

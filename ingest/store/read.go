@@ -415,13 +415,14 @@ func scanCounted(rows *sql.Rows) (*Counted, error) {
 
 // KeptAside is a row of set_aside as it is read back.
 type KeptAside struct {
-	corpus.SetAside // Raw is filled up to the limit that was asked for
+	Key             int64 // rises with each row kept
+	corpus.SetAside       // Raw is filled up to the limit that was asked for
 	Size            int64
 }
 
-// EachSetAside streams the set-aside rows in the order of keeping, each with
-// at most limit bytes of its raw content.
-func (s *Store) EachSetAside(ctx context.Context, limit int64) iter.Seq2[*KeptAside, error] {
+// EachSetAside streams the set-aside rows behind the key after in the order of
+// keeping, each with at most limit bytes of its raw content.
+func (s *Store) EachSetAside(ctx context.Context, after, limit int64) iter.Seq2[*KeptAside, error] {
 	return func(yield func(*KeptAside, error) bool) {
 		fail := func(err error) { yield(nil, fmt.Errorf("read set-aside rows: %w", explain(err))) }
 		tx, err := s.db.BeginTx(ctx, &sql.TxOptions{ReadOnly: true})
@@ -430,7 +431,7 @@ func (s *Store) EachSetAside(ctx context.Context, limit int64) iter.Seq2[*KeptAs
 			return
 		}
 		defer tx.Rollback()
-		rows, err := tx.QueryContext(ctx, "SELECT a.key, f.path, a.row, a.line, a.reason, a.size FROM set_aside a JOIN file f ON f.key = a.file ORDER BY a.key")
+		rows, err := tx.QueryContext(ctx, "SELECT a.key, f.path, a.row, a.line, a.reason, a.size FROM set_aside a JOIN file f ON f.key = a.file WHERE a.key > ? ORDER BY a.key", after)
 		if err != nil {
 			fail(err)
 			return
@@ -443,13 +444,12 @@ func (s *Store) EachSetAside(ctx context.Context, limit int64) iter.Seq2[*KeptAs
 		}
 		defer parts.Close()
 		for rows.Next() {
-			var key int64
 			a := &KeptAside{}
-			if err := rows.Scan(&key, &a.File, &a.Row, &a.Line, &a.Reason, &a.Size); err != nil {
+			if err := rows.Scan(&a.Key, &a.File, &a.Row, &a.Line, &a.Reason, &a.Size); err != nil {
 				fail(err)
 				return
 			}
-			if err := readParts(ctx, parts, key, limit, &a.Raw); err != nil {
+			if err := readParts(ctx, parts, a.Key, limit, &a.Raw); err != nil {
 				fail(err)
 				return
 			}

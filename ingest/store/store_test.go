@@ -194,7 +194,7 @@ func TestSetAsideOnce(t *testing.T) {
 		t.Errorf("new: %v", fresh)
 	}
 	var kept []*KeptAside
-	for a, err := range s.EachSetAside(context.Background(), math.MaxInt64) {
+	for a, err := range s.EachSetAside(context.Background(), 0, math.MaxInt64) {
 		if err != nil {
 			t.Fatal(err)
 		}
