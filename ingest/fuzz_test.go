@@ -15,6 +15,9 @@ import (
 	"strings"
 	"testing"
 	"unicode/utf8"
+
+	"github.com/klauspost/compress/zip"
+	"github.com/xuri/excelize/v2"
 )
 
 // checkItems holds what is true of every file: each row became exactly one
@@ -44,7 +47,15 @@ func checkItems(t *testing.T, text string, items []Item, passedOver string) {
 				raw = spooled
 			}
 		}
-		n := strings.Index(text[at:], string(raw))
+		// what is passed over may look like the row: look on the row's line
+		from := at
+		for from < len(text) && 1+strings.Count(text[:from], "\n") < it.Source.Line {
+			from++
+		}
+		n := strings.Index(text[from:], string(raw))
+		if n >= 0 {
+			n += from - at
+		}
 		if n < 0 || strings.Trim(text[at:at+n], passedOver) != "" {
 			t.Fatalf("row %d: raw %q does not follow %q", i+1, raw, text[at:])
 		}
@@ -370,6 +381,113 @@ func FuzzDate(f *testing.F) {
 		var e dateEvidence
 		if e.add(text, 1) != nil {
 			t.Fatalf("%q alone contradicts itself", text)
+		}
+	})
+}
+
+// Any bytes at all, as a file of any name: the sniffer, the charset and the
+// unpacking end in rows, in rows set aside, or in words.
+func FuzzOpen(f *testing.F) {
+	for _, seed := range []string{
+		"id;date\n1;2019\n", "\xFF\xFEi\x00d\x00\n\x001\x00\n\x00", "\xFE\xFF\x00i\x00d", "id,narrative\n1,caf\xe9\n", "\x1f\x8b\x08\x00", "\xEF\xBB\xBF[{\"id\":1}]",
+		"PK\x03\x04[Content_Types].xml", "sep=\t\nid\tnarrative\n1\tx\n", "<a><b id='1'/></a>", "%PDF-1.4", "id: 1\n\ntext", "{\"results\":{\"rows\":[{\"id\":\"1\"}]}}",
+	} {
+		f.Add([]byte(seed), "a.txt")
+		f.Add([]byte(seed), "a.csv")
+	}
+	f.Fuzz(func(t *testing.T, data []byte, name string) {
+		file, err := Open(context.Background(), name, bytes.NewReader(data), Options{MaxRow: 2000, SpoolDir: t.TempDir()})
+		if err != nil {
+			if err.Error() == "" {
+				t.Fatal("an error without words")
+			}
+			return
+		}
+		defer file.Close()
+		items, _ := drain(file) // a broken stream may end in an error
+		for i, it := range items {
+			if (it.Occurrence == nil) == (it.SetAside == nil) || it.Source.Row != i+1 {
+				t.Fatalf("row %d: %+v", i+1, it)
+			}
+			if it.Occurrence != nil {
+				checkText(t, it)
+			}
+		}
+	})
+}
+
+// The sheet of a workbook may hold anything.
+func FuzzWorkbook(f *testing.F) {
+	book := excelize.NewFile()
+	row := []any{"id", "date", "narrative"}
+	if err := book.SetSheetRow("Sheet1", "A1", &row); err != nil {
+		f.Fatal(err)
+	}
+	var template bytes.Buffer
+	if err := book.Write(&template); err != nil {
+		f.Fatal(err)
+	}
+	for _, rows := range []string{
+		`<row r="1"><c r="A1" t="inlineStr"><is><t>id</t></is></c><c r="B1" t="str"><v>date</v></c></row><row r="2"><c r="A2"><v>1</v></c><c r="B2" s="1"><v>43831.5</v></c></row>`,
+		`<row r="1048577"><c r="XFE1"><v>1</v></c></row>`, `<row><c t="s"><v>99</v></c></row>`, `<row r="-1"><c r="A0"/></row>`, `<row r="3"><c r="B3" t="e"><v>#N/A</v></c>`,
+	} {
+		f.Add(rows)
+	}
+	f.Fuzz(func(t *testing.T, rows string) {
+		sheet := `<?xml version="1.0" encoding="UTF-8"?><worksheet xmlns="http://schemas.openxmlformats.org/spreadsheetml/2006/main"><sheetData>` + rows + `</sheetData></worksheet>`
+		file, err := Open(context.Background(), "a.xlsx", bytes.NewReader(withSheet(t, template.Bytes(), sheet)), Options{MaxRow: 2000, SpoolDir: t.TempDir()})
+		if err != nil {
+			return
+		}
+		defer file.Close()
+		items, _ := drain(file)
+		for _, it := range items {
+			if it.Occurrence != nil {
+				checkText(t, it)
+			}
+		}
+	})
+}
+
+// withSheet puts another text in place of a workbook's first sheet.
+func withSheet(t *testing.T, book []byte, sheet string) []byte {
+	t.Helper()
+	in, err := zip.NewReader(bytes.NewReader(book), int64(len(book)))
+	if err != nil {
+		t.Fatal(err)
+	}
+	var b bytes.Buffer
+	out := zip.NewWriter(&b)
+	for _, m := range in.File {
+		if m.Name != "xl/worksheets/sheet1.xml" {
+			if err := out.Copy(m); err != nil {
+				t.Fatal(err)
+			}
+			continue
+		}
+		w, err := out.Create(m.Name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := io.WriteString(w, sheet); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if err := out.Close(); err != nil {
+		t.Fatal(err)
+	}
+	return b.Bytes()
+}
+
+// A map that is accepted names only fields that there are.
+func FuzzMap(f *testing.F) {
+	for _, seed := range []string{"[columns]\n\"Case\" = \"id\"\n", "source = \"x\"\ndates = \"dmy\"\n", "[columns]\nA = \"narrative:cause\"\n", "x", "[columns]\nA = [1]\n", "[[columns]]\n"} {
+		f.Add([]byte(seed))
+	}
+	f.Fuzz(func(t *testing.T, data []byte) {
+		m, err := ParseMap("map.toml", data)
+		if err == nil && m == nil || err != nil && !strings.Contains(err.Error(), "map.toml") {
+			t.Fatalf("%v, %v", m, err)
 		}
 	})
 }

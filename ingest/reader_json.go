@@ -81,7 +81,9 @@ func wrappedList(head []byte) int {
 					candidate = int(d.InputOffset())
 				}
 			default:
-				path = path[:depth-1]
+				if path = path[:depth-1]; len(path) == 0 {
+					return 0 // what follows is another value
+				}
 			}
 		default:
 			if !top.object {
