@@ -23,6 +23,7 @@ type options struct {
 	bytes    int
 	from, to string
 	doubles  float64
+	edited   float64
 	ids      string
 	level    bool
 	out      string
@@ -83,6 +84,7 @@ func (o *options) addFlags(cmd *cobra.Command) {
 	f.StringVar(&o.from, "from", "2019-01", "first date: 2019, 2019-01 or 2019-01-31")
 	f.StringVar(&o.to, "to", "2025-12", "last date, the same forms")
 	f.Float64Var(&o.doubles, "doubles", 0, "share of occurrences that tell an earlier one again, 0 to 0.5")
+	f.Float64Var(&o.edited, "edited", 0, "share of these that copy its text with edited wording, 0 to 1; the others use their own words")
 	f.StringVar(&o.ids, "ids", string(fabricate.RunningIDs), "ids: running (F-000001) or scenario (T20-201)")
 	f.BoolVar(&o.level, "level", false, "plant no trend")
 	f.StringVar(&o.out, "out", "-", "file for the records, - for standard output")
@@ -93,7 +95,7 @@ func (o *options) addFlags(cmd *cobra.Command) {
 
 // read turns the flags into options of the package.
 func (o *options) read() (fabricate.Options, error) {
-	made := fabricate.Options{Seed: o.seed, Count: o.count, MeanBytes: o.bytes, Doubles: o.doubles, IDs: fabricate.IDs(o.ids)}
+	made := fabricate.Options{Seed: o.seed, Count: o.count, MeanBytes: o.bytes, Doubles: o.doubles, Edited: o.edited, IDs: fabricate.IDs(o.ids)}
 	var err error
 	if made.From, err = corpus.ParseDate(o.from); err != nil {
 		return made, &usageError{fmt.Errorf("--from: %w", err)}

@@ -42,6 +42,7 @@ func TestSameOptionsSameBytes(t *testing.T) {
 	for _, o := range []Options{
 		{Seed: 3, Count: 300},
 		{Seed: 3, Count: 300, Doubles: 0.2, MeanBytes: 1685, IDs: ScenarioIDs},
+		{Seed: 4, Count: 300, Doubles: 0.4, Edited: 0.5},
 	} {
 		first := bytesOf(t, o)
 		if !bytes.Equal(first, bytesOf(t, o)) {
@@ -105,6 +106,7 @@ func TestTruthBelongsToText(t *testing.T) {
 			Count:     rapid.IntRange(0, 60).Draw(t, "count"),
 			MeanBytes: rapid.SampledFrom([]int{0, 0, 1, 500, 1685, 6000}).Draw(t, "bytes"),
 			Doubles:   rapid.Float64Range(0, 0.5).Draw(t, "doubles"),
+			Edited:    rapid.Float64Range(0, 1).Draw(t, "edited"),
 			IDs:       rapid.SampledFrom([]IDs{"", RunningIDs, ScenarioIDs}).Draw(t, "ids"),
 		}
 		m := New(o)
@@ -335,6 +337,33 @@ func TestShiftsPlantATrend(t *testing.T) {
 	}
 	if before, after := omitted([]Shift{}, 2021), omitted([]Shift{}, 2025); after > before*3/2 {
 		t.Errorf("without shifts: %d in 2021, %d in 2025; want them level", before, after)
+	}
+}
+
+// An edited double keeps much of the wording, never all of it, and what shows
+// its factors.
+func TestEditedDoubles(t *testing.T) {
+	earlier := map[string]corpus.Occurrence{}
+	n := 0
+	for o, truth := range New(Options{Seed: 12, Count: 4000, MeanBytes: 1685, Doubles: 0.1, Edited: 1}).All() {
+		if truth.DoubleOf != "" {
+			n++
+			checkTruth(t, o, truth)
+			first := earlier[truth.DoubleOf].Narratives[0].Text
+			kept := 0
+			for _, s := range strings.SplitAfter(first, ". ") {
+				if strings.Contains(o.Narratives[0].Text, s) {
+					kept += len(s)
+				}
+			}
+			if first == o.Narratives[0].Text && len(first) > 400 || kept == 0 && len(first) > 1200 {
+				t.Errorf("%s keeps %d of %d bytes of %s", o.ID, kept, len(first), truth.DoubleOf)
+			}
+		}
+		earlier[o.ID] = o
+	}
+	if n < 250 {
+		t.Errorf("%d edited doubles of 4,000, want about 400", n)
 	}
 }
 

@@ -37,6 +37,9 @@ type retold struct {
 	plot   *plot
 	id     string
 	source string
+
+	edited *corpus.Occurrence // what is to be printed again with edits, nil for other words
+	truth  Truth
 }
 
 // Shares of the voices in percent; the rest are reports in capitals. A
@@ -137,6 +140,9 @@ func (m *Maker) Next() (corpus.Occurrence, Truth) {
 	if len(m.pending) > 0 && m.pending[0].due <= m.made {
 		again := m.pending[0]
 		m.pending = m.pending[1:]
+		if again.edited != nil {
+			return m.reprint(again)
+		}
 		o, t := m.tell(again.plot, m.otherVoice(again.source))
 		t.DoubleOf = again.id
 		return o, t
@@ -148,9 +154,27 @@ func (m *Maker) Next() (corpus.Occurrence, Truth) {
 	d := m.options.Doubles
 	grave := p.harm.fatal() || p.harm.injury == "serious" // nobody reports that in person
 	if d > 0 && !grave && m.random.Float64()*(1-d) < d {
-		m.pending = append(m.pending, retold{m.made + 1 + m.n(9), p, o.ID, o.Source})
+		again := retold{due: m.made + 1 + m.n(9), plot: p, id: o.ID, source: o.Source}
+		if m.options.Edited > 0 && m.random.Float64() < m.options.Edited {
+			again.edited, again.truth = &o, t
+		}
+		m.pending = append(m.pending, again)
 		slices.SortStableFunc(m.pending, func(a, b retold) int { return a.due - b.due })
 	}
+	return o, t
+}
+
+// reprint makes the double that another source printed with edited wording.
+func (m *Maker) reprint(again retold) (corpus.Occurrence, Truth) {
+	o, t := m.edit(*again.edited, again.truth)
+	o.Event = again.plot.occurrence().Event
+	if again.source == voluntary {
+		o.Source = again.plot.base.source
+	} else {
+		o.Source, o.Event = voluntary, "report"
+	}
+	o.ID = m.nextID(o.Source, again.plot)
+	t.ID, t.Source, t.DoubleOf = o.ID, o.Source, again.id
 	return o, t
 }
 

@@ -27,6 +27,10 @@ type Options struct {
 	// one again, from another source and in other words.
 	Doubles float64
 
+	// Edited is the share, in [0, 1], of the doubles that copy the earlier text
+	// with edited wording instead.
+	Edited float64
+
 	// Shifts change the mix of events over time, so that there is a trend to
 	// be found. Nil means DefaultShifts; an empty list means none.
 	Shifts []Shift
@@ -94,6 +98,9 @@ func (o Options) Check() error {
 	if !(o.Doubles >= 0 && o.Doubles <= 0.5) {
 		fault("share of doubles %v: want 0 to 0.5", o.Doubles)
 	}
+	if !(o.Edited >= 0 && o.Edited <= 1) {
+		fault("share of edited doubles %v: want 0 to 1", o.Edited)
+	}
 	if o.IDs != "" && o.IDs != RunningIDs && o.IDs != ScenarioIDs {
 		fault("ids %q: want %s or %s", o.IDs, RunningIDs, ScenarioIDs)
 	}
@@ -148,6 +155,9 @@ func (o Options) withDefaults() Options {
 		o.Doubles = 0
 	}
 	o.Doubles = min(o.Doubles, 0.5)
+	if !(o.Edited >= 0) {
+		o.Edited = 0
+	}
 	if o.Shifts == nil {
 		o.Shifts = DefaultShifts()
 	}
