@@ -8,7 +8,8 @@ import (
 // Keys finds the occurrences in scope.
 func Keys(records Records, s Scope) (map[int64]bool, error) {
 	keys := map[int64]bool{}
-	err := s.each(records, func(r *record) { keys[r.Key] = true })
+	s.Doubles = nil // each occurrence is found by itself
+	_, err := s.each(records, false, func(r *record) { keys[r.Key] = true })
 	return keys, err
 }
 

@@ -26,7 +26,7 @@ func Chains(records Records, o ChainOptions) (*table.Table, error) {
 	}
 	groups := map[string]*group{}
 	chained, usable, single := 0, 0, 0
-	err := o.Scope.each(records, func(r *record) {
+	doubles, err := o.Scope.each(records, false, func(r *record) {
 		if r.Usable {
 			usable++
 		}
@@ -68,6 +68,7 @@ func Chains(records Records, o ChainOptions) (*table.Table, error) {
 		fmt.Sprintf("share: of the %s with two links or more, among %d with a usable narrative; %d more have a single link", plural(chained, "chain"), usable, single),
 		"broken: a recovery follows the last condition, and no outcome comes after it",
 		"links are in the order of time as far as the words tell it; a chain is what was told, not a finding of cause")
+	t.Notes = append(t.Notes, doubles.notes()...)
 	if n := len(all) - len(t.Rows); n > 0 {
 		t.Notes = append(t.Notes, fmt.Sprintf("%s more not shown", plural(n, "chain")))
 	}

@@ -17,6 +17,7 @@ type Scope struct {
 	Only     filter.Node // nil for all
 	From, To corpus.Date // days or coarser, both included; zero for open
 	Tree     *catalogue.Tree
+	Doubles  *Doubles // nil where none are known: every occurrence counts
 }
 
 // record is an occurrence in scope with its factors and their ancestors.
@@ -28,21 +29,24 @@ type record struct {
 
 func (r *record) has(factor string) bool { return r.told[factor] || r.inferred[factor] }
 
-// each calls use for every occurrence in scope.
-func (s Scope) each(records Records, use func(*record)) error {
+// each calls use for every event in scope: an occurrence, or those together
+// that people say tell one event. With apart, those of different sources are
+// events of their own.
+func (s Scope) each(records Records, apart bool, use func(*record)) (account, error) {
+	told := newTellings(s.Doubles, apart)
 	for c, err := range records {
 		if err != nil {
-			return err
+			return account{}, err
 		}
 		r := &record{Counted: c, told: s.lineage(c.Told), inferred: s.lineage(c.Inferred)}
 		for f := range r.told {
 			delete(r.inferred, f)
 		}
-		if s.within(c.Occurrence.Date) && (s.Only == nil || filter.Eval(s.Only, &c.Occurrence, r.has)) {
+		if s.within(c.Occurrence.Date) && (s.Only == nil || filter.Eval(s.Only, &c.Occurrence, r.has)) && !told.hold(r) {
 			use(r)
 		}
 	}
-	return nil
+	return told.release(use), nil
 }
 
 func (s Scope) lineage(factors []string) map[string]bool {

@@ -41,7 +41,8 @@ func Trend(records Records, exposure []corpus.Exposure, o TrendOptions) (*table.
 		TrendOptions: o, cells: map[string]*cell{}, sources: map[string]map[string]*coverage{},
 		usableBySource: map[string]int{}, voluntary: map[string]bool{},
 	}
-	if err := o.Scope.each(records, t.add); err != nil {
+	var err error
+	if t.doubles, err = o.Scope.each(records, o.By == "source", t.add); err != nil {
 		return nil, err
 	}
 	keys := t.rows()
@@ -79,6 +80,7 @@ type trend struct {
 
 	usableBySource map[string]int
 	voluntary      map[string]bool // sources with voluntary reports
+	doubles        account
 }
 
 // cell is what one row of the table counts.
@@ -265,6 +267,7 @@ func (t *trend) notes(keys, factors []string, d *denominators) []string {
 	}
 	notes = append(notes, fmt.Sprintf("ranges are %g%% intervals: Wilson for shares, exact Poisson (Garwood) for rates", t.Level*100))
 	notes = append(notes, d.notes...)
+	notes = append(notes, t.doubles.notes()...)
 	smalls := 0
 	for _, f := range factors {
 		for _, k := range keys {

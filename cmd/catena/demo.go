@@ -124,6 +124,9 @@ func loadDemo(cmd *cobra.Command, g *globalOptions) error {
 		}
 	}
 	bar.finish()
+	if _, err := c.FindDoubles(cmd.Context(), false); err != nil {
+		return err
+	}
 	return loadDemoExposure(cmd, c)
 }
 
@@ -159,9 +162,13 @@ func showDemo(cmd *cobra.Command, c *collection.Collection) error {
 	if err != nil {
 		return err
 	}
+	known, err := knownDoubles(ctx, c)
+	if err != nil {
+		return err
+	}
 	for i, f := range headline4 {
 		t, err := queries.Trend(c.Store.Count(ctx), exposure, queries.TrendOptions{
-			Scope: queries.Scope{Only: only, Tree: tree}, Factors: []string{f}, By: string(corpus.ByYear), Per: "hours", Scale: 100_000, Level: 0.95,
+			Scope: queries.Scope{Only: only, Tree: tree, Doubles: known}, Factors: []string{f}, By: string(corpus.ByYear), Per: "hours", Scale: 100_000, Level: 0.95,
 		})
 		if err != nil {
 			return err
@@ -175,7 +182,7 @@ func showDemo(cmd *cobra.Command, c *collection.Collection) error {
 		}
 		fmt.Fprintln(out)
 	}
-	t, err := queries.Chains(c.Store.Count(ctx), queries.ChainOptions{Scope: queries.Scope{Tree: tree}, Most: 8, Level: 0.95})
+	t, err := queries.Chains(c.Store.Count(ctx), queries.ChainOptions{Scope: queries.Scope{Tree: tree, Doubles: known}, Most: 8, Level: 0.95})
 	if err != nil {
 		return err
 	}
@@ -190,6 +197,7 @@ What to type next:
   catena find 'friction lock' %[1]s
   catena find --only 'slow-airspeed and power-loss' %[1]s
   catena case HT-24-001 %[1]s
+  catena doubles %[1]s
   catena load YOUR-FILE.csv                 your own reports, into ./collection
 
 No figure here is a finding of cause. The investigating authority, the aircraft flight manual,

@@ -14,7 +14,7 @@ import (
 var floors = map[string]int{
 	"cmd/catena": 8, "cmd/fabricate": 8,
 	"queries": 5, "ingest/collection": 5,
-	"ingest": 4, "ingest/store": 4, "ingest/fabricate": 4, "index": 4, "classify": 4,
+	"ingest": 4, "ingest/store": 4, "ingest/fabricate": 4, "ingest/doubles": 4, "index": 4, "classify": 4,
 	"classify/rulebook": 3, "queries/filter": 3,
 	"classify/text": 2, "queries/stats": 2, "queries/table": 2,
 	"ingest/corpus": 1, "classify/catalogue": 1,

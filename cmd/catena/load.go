@@ -105,6 +105,9 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 	if err := printLoad(cmd, g, l.sums); err != nil {
 		return err
 	}
+	if err := findDoubles(cmd, c); err != nil {
+		return err
+	}
 	if o.source == "" {
 		tellSources(cmd, l.sums)
 	}
@@ -140,6 +143,9 @@ func retryAside(cmd *cobra.Command, g *globalOptions, o *loadOptions, c *collect
 		}
 	}
 	if err := printLoad(cmd, g, sums); err != nil {
+		return err
+	}
+	if err := findDoubles(cmd, c); err != nil {
 		return err
 	}
 	return asideError(sums)

@@ -64,7 +64,7 @@ Exit status: 0 done, 1 failed, 2 wrong usage, 3 done but some input was set asid
 	root.CompletionOptions.HiddenDefaultCmd = false
 	root.AddCommand(
 		newDemoCommand(g()), newLoadCommand(g()), newExposureCommand(g()), newTagCommand(g()), newFindCommand(g()), newTrendCommand(g()),
-		newChainsCommand(g()), newCaseCommand(g()), newExportCommand(g()), newRulesCommand(g()), newManCommand(),
+		newChainsCommand(g()), newCaseCommand(g()), newDoublesCommand(g()), newExportCommand(g()), newRulesCommand(g()), newManCommand(),
 	)
 	return root
 }
@@ -169,7 +169,14 @@ func (g *globalOptions) openScoped(cmd *cobra.Command) (*collection.Collection, 
 		return nil, scope, err
 	}
 	c, err := g.open(cmd)
-	return c, scope, err
+	if err != nil {
+		return nil, scope, err
+	}
+	if scope.Doubles, err = knownDoubles(cmd.Context(), c); err != nil {
+		c.Close()
+		return nil, scope, err
+	}
+	return c, scope, nil
 }
 
 // factors checks that the arguments are factors of the catalogue.
