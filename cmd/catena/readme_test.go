@@ -20,7 +20,8 @@ func TestReadmeCommands(t *testing.T) {
 	for name, text := range map[string]string{
 		"reports.csv": "Ref,Date,Make,Model,Narrative\n" +
 			"R-2024-017,2024-07-03,Larkin,120,\"The left engine quit, the wrong rudder went in and the airspeed decayed.\"\n" +
-			"R-2024-018,2024-08-11,Larkin,160,Rotating at Tarnwick the canopy flew open and a bird was struck.\n",
+			"R-2024-018,2024-08-11,Larkin,160,Rotating at Tarnwick the canopy flew open and a bird was struck.\n" +
+			"R-2024-031,2024-07-03,Larkin,120,The student was late on the right rudder when the power went.\n",
 		"hours.csv": "period,hours,covers\n2024-Q3,410.5,our-base\n",
 	} {
 		if err := os.WriteFile(name, []byte(text), 0o600); err != nil {
@@ -66,8 +67,8 @@ func checkReadmeRule(t *testing.T, readme string) {
 	if out := catena(t, exitDone, "rules", "check", "--rules", "our-rules"); !strings.Contains(out, "all as they should be") {
 		t.Errorf("rules check printed %q", out)
 	}
-	if out := catena(t, exitDone, "tag", "--rules", "our-rules"); !strings.Contains(out, "tagged 1 of 2") {
-		t.Errorf("tag printed %q", out) // the other one is not touched by the new rule
+	if out := catena(t, exitDone, "tag", "--rules", "our-rules"); !strings.Contains(out, "tagged 1 of 3") {
+		t.Errorf("tag printed %q", out) // the other two are not touched by the new rule
 	}
 	out := catena(t, exitDone, "rules", "explain", "R-2024-018", "door-open")
 	for _, want := range []string{"the [canopy flew open]", "rule door-open/canopy (own.yaml:3", "The canopy came open."} {
