@@ -188,6 +188,39 @@ func (x *Index) Delete(keys []int64, change int64) (err error) {
 	return nil
 }
 
+// Keys lists the keys of all documents, in no order.
+func (x *Index) Keys() (keys []int64, err error) {
+	defer recovered(&err)
+	advanced, err := x.bleve.Advanced()
+	if err != nil {
+		return nil, fmt.Errorf("read index: %w", err)
+	}
+	r, err := advanced.Reader()
+	if err != nil {
+		return nil, fmt.Errorf("read index: %w", err)
+	}
+	defer r.Close()
+	all, err := r.DocIDReaderAll()
+	if err != nil {
+		return nil, fmt.Errorf("read index: %w", err)
+	}
+	defer all.Close()
+	for {
+		n, err := all.Next()
+		if err != nil {
+			return nil, fmt.Errorf("read index: %w", err)
+		}
+		if n == nil {
+			return keys, nil
+		}
+		id, err := r.ExternalID(n)
+		if err != nil {
+			return nil, fmt.Errorf("read index: %w", err)
+		}
+		keys = append(keys, keyOf(id))
+	}
+}
+
 // docID is the key in decimal digits of fixed width, so that ties in a
 // ranking stand in the order of the database.
 func docID(key int64) string { return fmt.Sprintf("%015d", key) }

@@ -354,6 +354,13 @@ func printLoad(cmd *cobra.Command, g *globalOptions, sums []collection.FileSumma
 		t.Rows = append(t.Rows, []table.Cell{strings.TrimPrefix(s.Path, folder), s.Rows, s.Stored, s.Unchanged, s.Revised, s.SetAside, s.Narratives, s.Dated})
 		nothing = nothing && s.Stored+s.Revised == 0 && s.Rows > 0
 	}
+	barred := 0
+	for _, s := range sums {
+		barred += s.Barred
+	}
+	if barred > 0 {
+		t.Notes = append(t.Notes, fmt.Sprintf("%d of the unchanged rows hold references that were removed here, and stay out (catena remove --list)", barred))
+	}
 	if nothing && len(sums) > 0 {
 		t.Notes = append(t.Notes, "nothing has changed: all of this was loaded before")
 	}

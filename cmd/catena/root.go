@@ -64,7 +64,8 @@ Exit status: 0 done, 1 failed, 2 wrong usage, 3 done but some input was set asid
 	root.CompletionOptions.HiddenDefaultCmd = false
 	root.AddCommand(
 		newDemoCommand(g()), newLoadCommand(g()), newExposureCommand(g()), newTagCommand(g()), newFindCommand(g()), newTrendCommand(g()),
-		newChainsCommand(g()), newCaseCommand(g()), newDoublesCommand(g()), newExportCommand(g()), newRulesCommand(g()), newManCommand(),
+		newChainsCommand(g()), newCaseCommand(g()), newDoublesCommand(g()), newExportCommand(g()), newRulesCommand(g()),
+		newCheckCommand(g()), newBackupCommand(g()), newRestoreCommand(g()), newRemoveCommand(g()), newManCommand(),
 	)
 	return root
 }

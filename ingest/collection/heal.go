@@ -131,6 +131,16 @@ func (c *Collection) rebuild(ctx context.Context, want int64) error {
 
 // replay feeds the index with every change that it does not reflect.
 func (c *Collection) replay(ctx context.Context, x *index.Index, want int64) error {
+	// what was removed goes first: the mark of the changes stays where it is
+	gone, err := c.Store.RemovedKeys(ctx, x.Change())
+	if err != nil {
+		return err
+	}
+	if len(gone) > 0 {
+		if err := x.Delete(gone, x.Change()); err != nil {
+			return err
+		}
+	}
 	f := newFeeder(x)
 	for r, err := range c.Store.Each(ctx, store.Select{ByChange: true, After: x.Change()}) {
 		if err != nil {

@@ -44,6 +44,7 @@ type FileSummary struct {
 	Narratives int    `json:"narratives"` // usable narratives among the occurrences read
 	Dated      int    `json:"dated"`      // occurrences read with a date
 
+	Barred  int           `json:"-"` // of the unchanged: rows whose reference a person removed
 	Charset string        `json:"-"` // what the file's text was decoded from
 	Unread  []string      `json:"-"` // sheets of a workbook that are not read
 	Unknown []ingest.Word `json:"-"` // words kept for want of a word of the record
@@ -364,6 +365,10 @@ func (l *loading) writeOne(b *store.Batch, sum *FileSummary, j *job) (*indexed, 
 		sum.Stored++
 	case store.Revised:
 		sum.Revised++
+	case store.Barred:
+		sum.Unchanged++
+		sum.Barred++
+		return nil, nil
 	default:
 		sum.Unchanged++
 		return nil, nil

@@ -19,7 +19,8 @@ type Row struct {
 	Key    int64
 	Change int64
 	corpus.Tagged
-	corpus.Source // where it was read from
+	corpus.Source        // where it was read from
+	Hash          []byte // of its content, as it was stored
 }
 
 // querier is a database or a transaction.
@@ -58,13 +59,13 @@ func (f *fields) done() error {
 	return nil
 }
 
-const rowQuery = `SELECT o.key, o.change, o.rulebook, f.path, o.row, o.line, ` + fieldColumns + `
+const rowQuery = `SELECT o.key, o.change, o.rulebook, f.path, o.row, o.line, o.hash, ` + fieldColumns + `
 	FROM occurrence o JOIN file f ON f.key = o.file `
 
 func scanRow(rows *sql.Rows) (*Row, error) {
 	r := &Row{}
 	f := fields{o: &r.Occurrence}
-	if err := rows.Scan(append([]any{&r.Key, &r.Change, &r.Rulebook, &r.File, &r.Row, &r.Line}, f.into()...)...); err != nil {
+	if err := rows.Scan(append([]any{&r.Key, &r.Change, &r.Rulebook, &r.File, &r.Row, &r.Line, &r.Hash}, f.into()...)...); err != nil {
 		return nil, err
 	}
 	return r, f.done()

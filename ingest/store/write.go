@@ -28,11 +28,12 @@ type Put struct {
 type Fate int
 
 // The fates. Unchanged: this content is there already, as the current one or
-// as an earlier revision.
+// as an earlier revision. Barred: a person removed this reference.
 const (
 	Stored Fate = iota
 	Unchanged
 	Revised
+	Barred
 )
 
 // Batch is a transaction of writes. What it wrote becomes visible with Commit,
@@ -43,6 +44,7 @@ type Batch struct {
 	change int64
 	files  map[string]int64
 	stmts  map[string]*sql.Stmt
+	barred bool  // some references are removed
 	err    error // first error of prepared execs
 }
 
@@ -61,6 +63,10 @@ func (s *Store) Begin(ctx context.Context) (*Batch, error) {
 	if b.change, err = strconv.ParseInt(value, 10, 64); err != nil {
 		tx.Rollback()
 		return nil, fmt.Errorf("read change number: %w", err)
+	}
+	if err := tx.QueryRowContext(ctx, "SELECT EXISTS (SELECT 1 FROM removed)").Scan(&b.barred); err != nil {
+		tx.Rollback()
+		return nil, fmt.Errorf("read removed references: %w", explain(err))
 	}
 	return b, nil
 }
@@ -145,6 +151,14 @@ func (b *Batch) Put(p *Put, mapName string) (key int64, fate Fate, err error) {
 	var hash []byte
 	switch err := find.QueryRowContext(b.ctx, p.Occurrence.Source, p.ID).Scan(&key, &hash); {
 	case errors.Is(err, sql.ErrNoRows):
+		if b.barred {
+			switch gone, err := b.isRemoved(p.Occurrence.Source, p.ID); {
+			case err != nil:
+				return 0, 0, err
+			case gone:
+				return 0, Barred, nil
+			}
+		}
 		key, fate = b.insert(p, mapName), Stored
 	case err != nil:
 		return 0, 0, fmt.Errorf("look up %s %s: %w", p.Occurrence.Source, p.ID, explain(err))
