@@ -708,6 +708,9 @@ func (l *loader) cue(c *compiler, file string, y cueYAML) *Cue {
 type index[T any] [][]entry[T]
 
 type entry[T any] struct {
+	// mask stands beside the pattern, so that most patterns are ruled out
+	// without a look at them: they lie all over the memory
+	mask    text.Signature
 	owner   T
 	pattern *Pattern
 }
@@ -717,7 +720,7 @@ func newIndex[T any](size int) index[T] { return make(index[T], size) }
 func (x index[T]) add(owner T, patterns []*Pattern) {
 	for _, p := range patterns {
 		for _, w := range p.first {
-			x[w] = append(x[w], entry[T]{owner, p})
+			x[w] = append(x[w], entry[T]{p.mask(), owner, p})
 		}
 	}
 }
@@ -746,9 +749,12 @@ func (b *Book) FindOnward(d *text.Doc, s text.Sentence, found func(Match)) {
 }
 
 func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match)) {
+	signature := d.Signature(s)
 	for i := s.First; i < s.Last; i++ {
-		for _, e := range x[d.Tokens[i].Word] {
-			if !e.pattern.possible(d, s) {
+		entries := x[d.Tokens[i].Word]
+		for k := range entries {
+			e := &entries[k]
+			if !e.mask.Meets(&signature) || !e.pattern.possible(d, s) {
 				continue
 			}
 			if m, ok := e.pattern.MatchAt(d, i, s.Last); ok {
@@ -761,7 +767,7 @@ func find[T any](x index[T], d *text.Doc, s text.Sentence, found func(T, Match))
 // Stands tells whether one of the patterns matches anywhere in the sentence.
 func Stands(patterns []*Pattern, d *text.Doc, s text.Sentence) bool {
 	for _, p := range patterns {
-		if !p.possible(d, s) || !d.Has(s, p.first) {
+		if !p.possible(d, s) || !d.Has(s, p.first, p.starts) {
 			continue
 		}
 		for i := s.First; i < s.Last; i++ {

