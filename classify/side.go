@@ -15,11 +15,15 @@ type airframe struct {
 }
 
 // frame tells how the engines of an aircraft stand. The narrative's own words
-// come before the record's number of engines, which is often wrong in
-// published data. Engines on the centre line, rotors and gliders have no dead
+// come first, then the table of types, then the record's number of engines,
+// which is often wrong in published data. Engines on the centre line, rotors and gliders have no dead
 // side.
 func (c *Classifier) frame(o *corpus.Occurrence, d *text.Doc) airframe {
 	f := airframe{engines: o.Engines}
+	known, inTable := c.book.Type(o.Make, o.Model)
+	if inTable {
+		f.engines = known.Engines
+	}
 	told := 0 // the smallest number of engines that the words tell
 	for _, s := range d.Sentences {
 		if rulebook.Stands(c.book.CentreLine, d, s) {
@@ -33,6 +37,9 @@ func (c *Classifier) frame(o *corpus.Occurrence, d *text.Doc) airframe {
 	}
 	if told > 0 {
 		f.engines = told
+	}
+	if inTable && (known.Place != "wings" || known.Kind != "airplane") {
+		return f
 	}
 	category := strings.ToLower(o.Category)
 	f.dead = f.engines != 1 && !strings.HasPrefix(category, "heli") && !strings.HasPrefix(category, "rotor") && !strings.HasPrefix(category, "glid")

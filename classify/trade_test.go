@@ -105,3 +105,27 @@ func TestRedAndBlueLines(t *testing.T) {
 		}
 	}
 }
+
+// The table of types stands over the record's number of engines, and under the
+// narrative's own words.
+func TestTypeTableAndSides(t *testing.T) {
+	const text = "The left engine failed at 300 feet. The pilot pressed the left pedal."
+	for _, c := range []struct {
+		make, model string
+		engines     int
+		text        string
+		wrong       bool
+	}{
+		{"PIPER", "PA-44-180", 1, text, true},                                    // the record is wrong
+		{"CESSNA", "337G", 2, text, false},                                       // centre line
+		{"Marrow", "Twin 44", 1, text, false},                                    // not in the table
+		{"PIPER", "PA-28", 1, "The twin-engine aircraft climbed. " + text, true}, // the words know better
+		{"ROBINSON", "R44", 2, text, false},
+	} {
+		o := corpus.Occurrence{Aircraft: corpus.Aircraft{Make: c.make, Model: c.model, Engines: c.engines}, Narratives: []corpus.Narrative{{Kind: "factual", Text: c.text}}}
+		wrong := slices.ContainsFunc(classifier(t).Tag(&o).Tags, func(g corpus.Tag) bool { return classifier(t).Book().Tree.Implies(g.Factor, "wrong-rudder") && g.Assertion == corpus.Affirmed })
+		if wrong != c.wrong {
+			t.Errorf("%s %s with %d engines by the record: wrong rudder %v, want %v", c.make, c.model, c.engines, wrong, c.wrong)
+		}
+	}
+}

@@ -53,6 +53,7 @@ type Book struct {
 	turns  index[struct{}]
 	onward index[struct{}]
 	terms  map[string]*term
+	types  []typeKey
 }
 
 // Rule finds one factor.
@@ -221,6 +222,7 @@ type fileYAML struct {
 	Retold   []located            `yaml:"told again"`
 	InBrief  []located            `yaml:"told in brief"`
 	Strength *Calibration         `yaml:"calibration"`
+	Types    []typesYAML          `yaml:"aircraft types"`
 }
 
 type ruleYAML struct {
@@ -429,6 +431,7 @@ func (l *loader) compile() {
 		b.InBrief = append(b.InBrief, l.patterns(c, l.names[i], f.InBrief)...)
 		b.Retelling = append(b.Retelling, l.patterns(c, l.names[i], f.Retold)...)
 		b.SpeedFlown = append(b.SpeedFlown, l.patterns(c, l.names[i], f.Speed)...)
+		l.aircraftTypes(l.names[i], f.Types)
 		b.LandingRoll = append(b.LandingRoll, l.patterns(c, l.names[i], f.Landing)...)
 		b.CentreLine = append(b.CentreLine, l.patterns(c, l.names[i], f.Centre)...)
 		for n, from := range map[int][]located{2: f.Two, 3: f.Three, 4: f.Four} {
@@ -663,6 +666,10 @@ func (l *loader) commonHash(used map[string]bool) string {
 		}
 		for _, name := range slices.Sorted(maps.Keys(f.Actors)) {
 			texts(name, f.Actors[name])
+		}
+		for _, y := range f.Types {
+			fmt.Fprintf(h, "\n%d|%s|%s", y.Engines, y.Place, y.Kind)
+			texts("types", y.Types)
 		}
 	}
 	l.hashTerms(h, used)

@@ -13,6 +13,7 @@
 //	         what tells the order of time (due to, which led to, ...)
 //	landing roll, minimum control speed is, speed flown is:
 //	         what the inference from sides and from speeds looks for
+//	aircraft types: how many engines a type has, and where
 //
 // What a rule looks for is a pattern; see Pattern for how one is written.
 //

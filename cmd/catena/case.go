@@ -78,6 +78,9 @@ func printCase(cmd *cobra.Command, c *collection.Collection, r *store.Row) {
 			fmt.Fprintf(out, "  %s: %s\n", f.name, clean(f.value))
 		}
 	}
+	if known, ok := c.Classifier.Book().Type(r.Make, r.Model); ok && r.Engines > 0 && known.Engines != r.Engines {
+		fmt.Fprintf(out, "  engines: %d by the table of types (%s), %d by the record; the table is followed\n", known.Engines, known.Name, r.Engines)
+	}
 	fmt.Fprintf(out, "  read from %s, row %d, line %d; rule book %s\n", clean(r.File), r.Row, r.Line, r.Rulebook)
 	fmt.Fprintf(out, "\nChain, in the order of time:\n")
 	if len(r.Chain.Links) == 0 {
