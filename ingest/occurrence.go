@@ -94,6 +94,7 @@ func (b *builder) cell(c cell) (reason string) {
 		return ""
 	}
 	target := b.field(p.field)
+	n, of := splitFurther(p.field)
 	switch {
 	case p.field == toDropped:
 	case c.nested:
@@ -103,8 +104,7 @@ func (b *builder) cell(c cell) (reason string) {
 	case craftField(p.field) >= 0:
 		b.craft[craftField(p.field)] = c
 		b.exact = b.exact || p.exact
-	case strings.HasPrefix(p.field, "aircraft"):
-		n, of := splitFurther(p.field)
+	case n > 0:
 		if b.further == nil {
 			b.further = map[int]*craftCells{}
 		}
@@ -121,7 +121,7 @@ func (b *builder) cell(c cell) (reason string) {
 		b.word(p.field, target, c)
 	case target != nil && p.exact:
 		*target = c.text
-	case target == nil:
+	case target == nil: // also a list of the record that is none here
 		b.extra(c.name, strings.TrimSpace(c.text))
 	case !placeholder(c.text):
 		*target = strings.TrimSpace(c.text)
