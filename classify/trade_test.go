@@ -123,7 +123,9 @@ func TestTypeTableAndSides(t *testing.T) {
 		{"ROBINSON", "R44", 2, text, false},
 	} {
 		o := corpus.Occurrence{Aircraft: corpus.Aircraft{Make: c.make, Model: c.model, Engines: c.engines}, Narratives: []corpus.Narrative{{Kind: "factual", Text: c.text}}}
-		wrong := slices.ContainsFunc(classifier(t).Tag(&o).Tags, func(g corpus.Tag) bool { return classifier(t).Book().Tree.Implies(g.Factor, "wrong-rudder") && g.Assertion == corpus.Affirmed })
+		wrong := slices.ContainsFunc(classifier(t).Tag(&o).Tags, func(g corpus.Tag) bool {
+			return classifier(t).Book().Tree.Implies(g.Factor, "wrong-rudder") && g.Assertion == corpus.Affirmed
+		})
 		if wrong != c.wrong {
 			t.Errorf("%s %s with %d engines by the record: wrong rudder %v, want %v", c.make, c.model, c.engines, wrong, c.wrong)
 		}

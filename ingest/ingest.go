@@ -24,7 +24,10 @@ type Options struct {
 	Dates    string // order of dates of three numbers: dmy, mdy, ymd, or "" to see from the values
 	MaxRow   int    // bytes of one row held in memory; 0 for DefaultMaxRow
 	SpoolDir string // where larger rows go, as temporary files; "" for the system's folder
-	Size     int64  // bytes of the stream, for progress; 0 where not known
+	// Delimiter is what stands between the cells of a table: one of Delimiters,
+	// or "" to see from the header.
+	Delimiter string
+	Size      int64 // bytes of the stream, for progress; 0 where not known
 
 	// Map is a person's map for the file; nil to see from the headers, or to
 	// take what Recall returns for the name that the automatic map has.
@@ -107,7 +110,10 @@ func (f *File) open(in io.Reader) error {
 	}
 	packed := bufio.NewReaderSize(in, windowSize)
 	head, _ := packed.Peek(windowSize)
-	lim := limits{f.opts.MaxRow, f.opts.SpoolDir}
+	lim := limits{f.opts.MaxRow, f.opts.SpoolDir, delimiterOf(f.opts.Delimiter)}
+	if f.opts.Delimiter != "" && lim.delimiter == 0 {
+		return fmt.Errorf("no delimiter is called %q; there are %s", f.opts.Delimiter, strings.Join(Delimiters, ", "))
+	}
 	if looksXLSX(head) {
 		return f.openWorkbook(packed, lim)
 	}
@@ -124,6 +130,9 @@ func (f *File) open(in io.Reader) error {
 		return noReports{err}
 	}
 	format := formatOf(f.path, w.bytes())
+	if lim.delimiter != 0 {
+		format = formats[len(formats)-1] // then it is a table
+	}
 	if f.reader, err = format.open(w, lim); err != nil {
 		var spooled errSpooled
 		if errors.As(err, &spooled) {

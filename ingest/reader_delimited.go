@@ -32,10 +32,16 @@ const maxUnclosed = 20
 func newDelimitedReader(w *window, lim limits) (rowReader, error) {
 	d := &delimitedReader{w: w, lim: lim, table: newColumnTable()}
 	d.split.delimiter = sniffDelimiter(w.bytes())
-	if mark, ok := separatorLine(w.bytes()); ok {
-		d.split.delimiter = mark
+	mark, told := separatorLine(w.bytes())
+	if told {
 		n, _ := lineEnd(w.bytes())
 		w.take(n)
+	}
+	if lim.delimiter != 0 {
+		mark, told = lim.delimiter, true
+	}
+	if told {
+		d.split.delimiter = mark
 	}
 	first, err := d.headerRow()
 	if err != nil {
@@ -55,6 +61,9 @@ func newDelimitedReader(w *window, lim limits) (rowReader, error) {
 		} else {
 			d.ahead = &second
 		}
+	}
+	if told { // and must be told again where rows are read again
+		d.header = slices.Concat([]byte("sep="), []byte{mark, '\n'}, d.header)
 	}
 	d.table.header(names)
 	return d, nil
@@ -400,6 +409,17 @@ func (s *splitter) cells(record string) []string {
 
 // delimiters are those that a table may use, the most common first.
 var delimiters = []byte{',', '\t', ';', '|'}
+
+// Delimiters are the names of those that a table may use.
+var Delimiters = []string{"comma", "tab", "semicolon", "pipe"}
+
+// delimiterOf is the delimiter of a name, 0 where there is none.
+func delimiterOf(name string) byte {
+	if i := slices.Index(Delimiters, name); i >= 0 {
+		return delimiters[i]
+	}
+	return 0
+}
 
 // sniffDelimiter picks the delimiter under which the header has the most
 // known words, or, when no word is known, the most cells.

@@ -47,6 +47,8 @@ type rowReader interface {
 type limits struct {
 	maxRow int    // bytes held in memory
 	dir    string // where larger rows are spooled
+
+	delimiter byte // of a table, as a person told it; 0 to see from the header
 }
 
 // tooLarge is the reason for a row over the limit.

@@ -22,6 +22,7 @@ import (
 
 type loadOptions struct {
 	source, dates     string
+	delimiter         string
 	mapPath, writeMap string
 	dryRun, retry     bool
 
@@ -64,6 +65,7 @@ occurrences with a usable narrative and with a date.`,
 	g.addAs(f, "text", "text or json")
 	f.StringVar(&o.source, "source", "", "name the source of these occurrences")
 	f.StringVar(&o.dates, "dates", "", "order of dates of three numbers: dmy, mdy or ymd")
+	f.StringVar(&o.delimiter, "delimiter", "", "what stands between the cells of a table: comma, tab, semicolon or pipe (default: seen from the header)")
 	f.StringVar(&o.mapPath, "map", "", "file that says which field each column is; \"-\" forgets the remembered one")
 	f.StringVar(&o.writeMap, "write-map", "", "write how the columns are read to a file, to correct and use with --map")
 	f.BoolVar(&o.retry, "retry", false, "read the rows that were set aside again, with what --map, --dates or --source say now")
@@ -77,6 +79,9 @@ func runLoad(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []strin
 	}
 	if o.dates != "" && !slices.Contains([]string{"dmy", "mdy", "ymd"}, o.dates) {
 		return usage(cmd, "--dates: %q is none of dmy, mdy and ymd", o.dates)
+	}
+	if o.delimiter != "" && !slices.Contains(ingest.Delimiters, o.delimiter) {
+		return usage(cmd, "--delimiter: %q is none of %s", o.delimiter, strings.Join(ingest.Delimiters, ", "))
 	}
 	if err := o.readMap(); err != nil {
 		return err
@@ -240,7 +245,8 @@ func (l *loader) input(in ingest.Input) (collection.FileSummary, error) {
 		return collection.FileSummary{Path: in.Path}, fmt.Errorf("open %q: %w", in.Path, err)
 	}
 	opts := collection.LoadOptions{
-		Source: l.o.source, Dates: l.o.dates, Size: in.Size, Map: l.o.file, Forget: l.o.mapPath == "-",
+		Delimiter: l.o.delimiter,
+		Source:    l.o.source, Dates: l.o.dates, Size: in.Size, Map: l.o.file, Forget: l.o.mapPath == "-",
 		Progress: func(path string, rows int, read, size int64) {
 			l.bar.show(filepath.Base(path), read, size)
 			l.bar.describe(fmt.Sprintf("%s: %d rows, %.0f a second", filepath.Base(path), rows, float64(rows)/time.Since(begun).Seconds()))
@@ -384,7 +390,7 @@ func sharedFolder(sums []collection.FileSummary) string {
 // dryRun shows the map of each file and three of its records, or only writes
 // the map.
 func dryRun(cmd *cobra.Command, g *globalOptions, o *loadOptions, paths []string) error {
-	opts := ingest.Options{Source: o.source, Dates: o.dates, SpoolDir: os.TempDir(), Map: o.file}
+	opts := ingest.Options{Source: o.source, Dates: o.dates, Delimiter: o.delimiter, SpoolDir: os.TempDir(), Map: o.file}
 	if exists(g.at) && o.mapPath == "" {
 		c, err := g.open(cmd)
 		if err != nil {

@@ -18,13 +18,14 @@ import (
 
 // LoadOptions say how to read files.
 type LoadOptions struct {
-	Source string          // names the source of all occurrences
-	Dates  string          // order of dates of three numbers: dmy, mdy or ymd
-	In     io.Reader       // the stream to read; nil for the file at the path
-	Size   int64           // of the stream in bytes, 0 where not known
-	Map    *ingest.MapFile // a person's map, remembered for files of the same columns
-	Forget bool            // the remembered map
-	Name   string          // what to call the path where rows are traced back; "" for the path
+	Source    string          // names the source of all occurrences
+	Dates     string          // order of dates of three numbers: dmy, mdy or ymd
+	Delimiter string          // what stands between the cells of a table, one of ingest.Delimiters; "" to see from the header
+	In        io.Reader       // the stream to read; nil for the file at the path
+	Size      int64           // of the stream in bytes, 0 where not known
+	Map       *ingest.MapFile // a person's map, remembered for files of the same columns
+	Forget    bool            // the remembered map
+	Name      string          // what to call the path where rows are traced back; "" for the path
 	// Progress is told, after each batch, how far the file has been read, in
 	// bytes on disk; size is 0 where it is not known.
 	Progress func(path string, rows int, read, size int64)
@@ -75,7 +76,7 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	if err := clearSpool(spool); err != nil {
 		return sum, err
 	}
-	with := ingest.Options{Source: opts.Source, Dates: opts.Dates, SpoolDir: spool, Size: opts.Size, Map: opts.Map}
+	with := ingest.Options{Source: opts.Source, Dates: opts.Dates, Delimiter: opts.Delimiter, SpoolDir: spool, Size: opts.Size, Map: opts.Map}
 	if !opts.Forget {
 		with.Recall = c.Recall(ctx)
 	}
