@@ -27,6 +27,7 @@ type Options struct {
 	// Delimiter is what stands between the cells of a table: one of Delimiters,
 	// or "" to see from the header.
 	Delimiter string
+	Table     bool  // it is delimited text, whatever its name and beginning look like
 	Size      int64 // bytes of the stream, for progress; 0 where not known
 
 	// Map is a person's map for the file; nil to see from the headers, or to
@@ -130,7 +131,7 @@ func (f *File) open(in io.Reader) error {
 		return noReports{err}
 	}
 	format := formatOf(f.path, w.bytes())
-	if lim.delimiter != 0 {
+	if lim.delimiter != 0 || f.opts.Table {
 		format = formats[len(formats)-1] // then it is a table
 	}
 	if f.reader, err = format.open(w, lim); err != nil {

@@ -142,7 +142,7 @@ func (r *retry) reading(ctx context.Context, path string) (*reading, error) {
 		return nil, err
 	}
 	how := &reading{header: was.Header, sum: len(r.sums)}
-	how.opts = ingest.Options{Source: was.Source, Dates: was.Dates, SpoolDir: filepath.Join(r.c.Dir, spoolName), Map: r.opts.Map}
+	how.opts = ingest.Options{Table: len(was.Header) > 0, Source: was.Source, Dates: was.Dates, SpoolDir: filepath.Join(r.c.Dir, spoolName), Map: r.opts.Map}
 	if how.opts.Map == nil && was.Fields != "" {
 		if how.opts.Map, err = ingest.ParseMap("the map that read "+path, []byte(was.Fields)); err != nil {
 			return nil, err
