@@ -202,17 +202,14 @@ func merge(rs []*record) *record {
 	return out
 }
 
-// PairsTable lists pairs of possible doubles. name gives source and id of an
-// occurrence.
-func PairsTable(title string, pairs []store.Pair, name func(key int64) (source, id string)) *table.Table {
+// PairsTable lists pairs of possible doubles.
+func PairsTable(title string, pairs []store.Pair) *table.Table {
 	t := &table.Table{Title: title, Columns: []table.Column{
 		{Name: "source"}, {Name: "id"}, {Name: "other_source"}, {Name: "other_id"}, {Name: "probability"}, {Name: "evidence"},
 		{Name: "decision"}, {Name: "who"}, {Name: "when"}, {Name: "why"},
 	}}
 	for _, p := range pairs {
-		aSource, aID := name(p.A)
-		bSource, bID := name(p.B)
-		row := []table.Cell{aSource, aID, bSource, bID, math.Round(p.Probability*1e4) / 1e4, evidenceWords(p.Evidence), "", "", "", ""}
+		row := []table.Cell{p.Names[0].Source, p.Names[0].ID, p.Names[1].Source, p.Names[1].ID, math.Round(p.Probability*1e4) / 1e4, evidenceWords(p.Evidence), "", "", "", ""}
 		if p.Evidence == nil {
 			row[4] = nil
 		}

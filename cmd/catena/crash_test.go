@@ -49,7 +49,11 @@ func exported(t *testing.T, dir string) []byte {
 		}
 		out = append(out, part...)
 	}
-	return out
+	pairs, err := program("doubles", "--at", dir, "--most", "100000", "--as", "csv").Output()
+	if err != nil {
+		t.Fatalf("doubles: %v", err)
+	}
+	return append(out, pairs...)
 }
 
 // found is what the index says; it must hold every occurrence once.
@@ -159,5 +163,50 @@ func TestTwoLoadsAtOnce(t *testing.T) {
 	}
 	if got := found(t, dir); !strings.Contains(got, "700") {
 		t.Errorf("after two loads the index tells %s, want 700", got)
+	}
+}
+
+// A file that is written to while it is read, cut short and then whole again:
+// the user is told, and a second load makes good.
+func TestFileChangedWhileRead(t *testing.T) {
+	input := crashInput(t, 3000)
+	whole, err := os.ReadFile(input)
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir := filepath.Join(t.TempDir(), "c")
+	cmd := program("load", "--at", dir, input)
+	var told bytes.Buffer
+	cmd.Stderr = &told
+	if err := cmd.Start(); err != nil {
+		t.Fatal(err)
+	}
+	done := make(chan error, 1)
+	go func() { done <- cmd.Wait() }()
+	running := true
+	for n := 0; running; n++ {
+		select {
+		case err = <-done:
+			running = false
+		case <-time.After(3 * time.Millisecond):
+			if err := os.WriteFile(input, whole[:len(whole)*(n%7+1)/8], 0o600); err != nil {
+				t.Fatal(err)
+			}
+		}
+	}
+	if code := exitCode(err); code != exitSetAside && code != exitDone || !strings.Contains(told.String(), "changed while it was read") {
+		t.Errorf("load of a changing file: %v\n%s", err, told.String())
+	}
+	if err := os.WriteFile(input, whole, 0o600); err != nil {
+		t.Fatal(err)
+	}
+	if err := program("load", "--at", dir, input).Run(); exitCode(err) != exitSetAside {
+		t.Errorf("load of the file at rest: %v", err)
+	}
+	if got := found(t, dir); !strings.Contains(got, "3000") {
+		t.Errorf("the index tells %s, want 3000", got)
+	}
+	if out, err := program("check", "--at", dir).CombinedOutput(); err != nil {
+		t.Errorf("check: %v\n%s", err, out)
 	}
 }

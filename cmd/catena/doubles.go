@@ -176,18 +176,7 @@ func runDoubles(cmd *cobra.Command, g *globalOptions, o *doublesOptions) error {
 	}
 	pairs = pairs[:min(o.most, total)]
 	if g.as != "text" {
-		name := func(key int64) (source, id string) {
-			r, e := c.Store.One(ctx, key)
-			if e != nil {
-				err = cmp.Or(err, e)
-				return "", ""
-			}
-			return r.Occurrence.Source, r.ID
-		}
-		t := queries.PairsTable(what, pairs, name)
-		if err != nil {
-			return err
-		}
+		t := queries.PairsTable(what, pairs)
 		if n := total - len(pairs); n > 0 {
 			t.Notes = append(t.Notes, fmt.Sprintf("%d more not shown (--most)", n))
 		}

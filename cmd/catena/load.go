@@ -279,6 +279,9 @@ func tellFile(cmd *cobra.Command, sum collection.FileSummary) {
 	note := func(format string, args ...any) {
 		noteTo(cmd.ErrOrStderr())(clean(sum.Path) + " " + fmt.Sprintf(format, args...))
 	}
+	if sum.Changed {
+		note("changed while it was read: load it once more when nothing writes to it")
+	}
 	if sum.Charset != "UTF-8" && sum.Rows > 0 {
 		note("is read as %s", sum.Charset)
 	}

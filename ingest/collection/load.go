@@ -47,6 +47,7 @@ type FileSummary struct {
 
 	Barred  int           `json:"-"` // of the unchanged: rows whose reference a person removed
 	Charset string        `json:"-"` // what the file's text was decoded from
+	Changed bool          `json:"-"` // the file changed while it was read
 	Unread  []string      `json:"-"` // sheets of a workbook that are not read
 	Unknown []ingest.Word `json:"-"` // words kept for want of a word of the record
 	Map     *ingest.Map   `json:"-"`
@@ -80,6 +81,7 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	if !opts.Forget {
 		with.Recall = c.Recall(ctx)
 	}
+	before := stamp(path, opts.In)
 	f, err := ingest.Open(ctx, path, opts.In, with)
 	if err != nil {
 		return sum, err
@@ -96,10 +98,23 @@ func (c *Collection) Load(ctx context.Context, path string, opts LoadOptions) (s
 	}
 	err = l.run(ctx, x)
 	sum.Charset, sum.Unread, sum.Unknown = f.Charset(), f.Unread(), f.Unknown()
+	sum.Changed = stamp(path, opts.In) != before
 	if err != nil {
 		return sum, fmt.Errorf("load %s: %w", path, err)
 	}
 	return sum, nil
+}
+
+// stamp tells one state of a file on disk from another; "" for streams.
+func stamp(path string, in io.Reader) string {
+	if in != nil {
+		return ""
+	}
+	info, err := os.Stat(path)
+	if err != nil {
+		return fmt.Sprint(err)
+	}
+	return fmt.Sprint(info.Size(), info.ModTime())
 }
 
 // mapState names the state that holds the map for a header.

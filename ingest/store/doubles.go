@@ -178,14 +178,19 @@ type Decision struct {
 type Pair struct {
 	corpus.Double           // Evidence is nil where the search does not find it
 	Decision      *Decision // nil while undecided
+	Names         [2]Name   // of A and B
 }
+
+// Name is what an occurrence is known by.
+type Name struct{ Source, ID string }
 
 // Pairs reads the pairs that the search found or people decided about, the
 // likeliest first.
 func (s *Store) Pairs(ctx context.Context) ([]Pair, error) {
-	rows, err := s.db.QueryContext(ctx, `SELECT p.a, p.b, coalesce(d.probability, 0), coalesce(d.evidence, ''), x.same, x.who, x.at, x.note
+	rows, err := s.db.QueryContext(ctx, `SELECT p.a, p.b, coalesce(d.probability, 0), coalesce(d.evidence, ''), x.same, x.who, x.at, x.note, m.source, m.id, n.source, n.id
 		FROM (SELECT a, b FROM double UNION SELECT a, b FROM double_decision) p
 		LEFT JOIN double d ON d.a = p.a AND d.b = p.b LEFT JOIN double_decision x ON x.a = p.a AND x.b = p.b
+		JOIN occurrence m ON m.key = p.a JOIN occurrence n ON n.key = p.b
 		ORDER BY 3 DESC, 1, 2`)
 	if err != nil {
 		return nil, fmt.Errorf("read doubles: %w", explain(err))
@@ -197,7 +202,7 @@ func (s *Store) Pairs(ctx context.Context) ([]Pair, error) {
 		var evidence string
 		var same sql.NullBool
 		var who, at, note sql.NullString
-		if err := rows.Scan(&p.A, &p.B, &p.Probability, &evidence, &same, &who, &at, &note); err != nil {
+		if err := rows.Scan(&p.A, &p.B, &p.Probability, &evidence, &same, &who, &at, &note, &p.Names[0].Source, &p.Names[0].ID, &p.Names[1].Source, &p.Names[1].ID); err != nil {
 			return nil, fmt.Errorf("read doubles: %w", err)
 		}
 		if evidence != "" {

@@ -47,14 +47,31 @@ func Open(ctx context.Context, path string, readOnly bool) (*Store, error) {
 			return nil, fmt.Errorf("open %s: %w", path, ErrMissing)
 		}
 	}
+	s, err := connect(ctx, path, readOnly, false)
+	if err != nil && readOnly && cannotWrite(err) && logIsEmpty(path) {
+		// on a disk that cannot be written to SQLite has no place for what it
+		// shares between readers, and needs none, since nobody can write
+		s, err = connect(ctx, path, true, true)
+	}
+	if err != nil {
+		return nil, fmt.Errorf("open %s: %w", path, explain(err))
+	}
+	return s, nil
+}
+
+func connect(ctx context.Context, path string, readOnly, immutable bool) (*Store, error) {
 	// full synchronisation: an index must never reflect a change that a power
 	// cut took back. Commits are of a thousand rows, so it costs little.
 	query := url.Values{"_pragma": {
 		"busy_timeout(15000)", "page_size(16384)", "foreign_keys(1)", "synchronous(2)", "cache_size(-32000)", "temp_store(2)",
 	}}
-	if readOnly {
+	switch {
+	case immutable:
+		query.Set("immutable", "1")
+		query.Set("mode", "ro")
+	case readOnly:
 		query.Add("_pragma", "query_only(1)")
-	} else {
+	default:
 		query.Set("_txlock", "immediate")
 		query.Add("_pragma", "journal_mode(wal)")
 		// what is removed is overwritten, not only forgotten
@@ -63,14 +80,26 @@ func Open(ctx context.Context, path string, readOnly bool) (*Store, error) {
 	name := (&url.URL{Scheme: "file", Opaque: escapePath(path), RawQuery: query.Encode()}).String()
 	db, err := sql.Open("sqlite", name)
 	if err != nil {
-		return nil, fmt.Errorf("open %s: %w", path, err)
+		return nil, err
 	}
 	s := &Store{db, readOnly}
 	if err := s.migrate(ctx); err != nil {
 		db.Close()
-		return nil, fmt.Errorf("open %s: %w", path, explain(err))
+		return nil, err
 	}
 	return s, nil
+}
+
+// cannotWrite tells whether an error comes of a disk that cannot be written to.
+func cannotWrite(err error) bool {
+	text := err.Error()
+	return strings.Contains(text, "readonly database") || strings.Contains(text, "unable to open database file")
+}
+
+// logIsEmpty tells whether the database file holds all that was written.
+func logIsEmpty(path string) bool {
+	info, err := os.Stat(path + "-wal")
+	return errors.Is(err, fs.ErrNotExist) || err == nil && info.Size() == 0
 }
 
 // escapePath writes a path as the opaque part of a file: URI.
