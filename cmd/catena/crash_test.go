@@ -49,7 +49,7 @@ func exported(t *testing.T, dir string) []byte {
 		}
 		out = append(out, part...)
 	}
-	pairs, err := program("doubles", "--at", dir, "--most", "100000", "--as", "csv").Output()
+	pairs, err := program("doubles", "--at", dir, "--most", "500", "--as", "csv").Output()
 	if err != nil {
 		t.Fatalf("doubles: %v", err)
 	}

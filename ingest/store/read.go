@@ -140,7 +140,7 @@ func newParts(ctx context.Context, tx *sql.Tx) (*parts, error) {
 		into  **sql.Stmt
 		query string
 	}{
-		{&p.narratives, "SELECT kind, text FROM narrative WHERE occurrence = ? ORDER BY key"},
+		{&p.narratives, "SELECT kind, text FROM narrative WHERE " + narrativesOf + " ORDER BY key"},
 		{&p.tags, `SELECT factor, assertion, basis, narrative, start, "end", rule, strength, side, actor, quantity, rule_hash FROM tag WHERE occurrence = ? ORDER BY n`},
 		{&p.chain, "SELECT outcome, broken_by, links, doubts FROM chain WHERE occurrence = ?"},
 	} {

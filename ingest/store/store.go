@@ -74,8 +74,6 @@ func connect(ctx context.Context, path string, readOnly, immutable bool) (*Store
 	default:
 		query.Set("_txlock", "immediate")
 		query.Add("_pragma", "journal_mode(wal)")
-		// what is removed is overwritten, not only forgotten
-		query.Add("_pragma", "secure_delete(1)")
 	}
 	name := (&url.URL{Scheme: "file", Opaque: escapePath(path), RawQuery: query.Encode()}).String()
 	db, err := sql.Open("sqlite", name)

@@ -36,7 +36,7 @@ func (b *Batch) isRemoved(source, id string) (bool, error) {
 }
 
 // Remove takes an occurrence out with everything that belongs to it, its
-// history too, and notes that it was removed. What it held is overwritten.
+// history too, and notes that it was removed. No page of the file holds it then.
 func (s *Store) Remove(ctx context.Context, key int64, r Removal) error {
 	b, err := s.Begin(ctx)
 	if err != nil {
@@ -47,7 +47,8 @@ func (s *Store) Remove(ctx context.Context, key int64, r Removal) error {
 	for _, table := range []string{"double", "double_decision"} {
 		b.exec("DELETE FROM "+table+" WHERE a = ?1 OR b = ?1", key)
 	}
-	for _, table := range []string{"tag", "chain", "narrative", "raw", "revision"} {
+	b.exec("DELETE FROM narrative WHERE "+narrativesOf, key)
+	for _, table := range []string{"tag", "chain", "raw", "revision"} {
 		b.exec("DELETE FROM "+table+" WHERE occurrence = ?", key)
 	}
 	b.exec("DELETE FROM occurrence WHERE key = ?", key)
@@ -55,6 +56,11 @@ func (s *Store) Remove(ctx context.Context, key int64, r Removal) error {
 	b.exec("UPDATE state SET value = ? WHERE name = ? AND value = ?", strconv.FormatInt(b.change, 10), doublesState, strconv.FormatInt(b.change-1, 10))
 	if err := b.Commit(); err != nil {
 		return err
+	}
+	// the database is written anew without its free pages, which hold what was
+	// deleted, today or before
+	if _, err := s.db.ExecContext(ctx, "VACUUM"); err != nil {
+		return fmt.Errorf("overwrite what was removed: %w", explain(err))
 	}
 	return s.flushLog(ctx)
 }

@@ -6,7 +6,6 @@ import (
 	"crypto/sha256"
 	"database/sql"
 	"encoding/json"
-	"errors"
 	"fmt"
 	"io"
 	"os"
@@ -54,7 +53,9 @@ func (s *Store) Begin(ctx context.Context) (*Batch, error) {
 	if err != nil {
 		return nil, fmt.Errorf("begin to write: %w", explain(err))
 	}
-	b := &Batch{ctx: ctx, tx: tx, files: map[string]int64{}, stmts: map[string]*sql.Stmt{}}
+	// the driver watches over a context that can end with a goroutine for each
+	// statement; here the end of ctx rolls the transaction back
+	b := &Batch{ctx: context.WithoutCancel(ctx), tx: tx, files: map[string]int64{}, stmts: map[string]*sql.Stmt{}}
 	var value string
 	if err := tx.QueryRowContext(ctx, "SELECT value FROM state WHERE name = 'change'").Scan(&value); err != nil {
 		tx.Rollback()
@@ -144,34 +145,36 @@ func (b *Batch) file(path, mapName string) int64 {
 // Content that is stored already, or was before, changes nothing. mapName is
 // the field map that read it. It returns the key of the occurrence.
 func (b *Batch) Put(p *Put, mapName string) (key int64, fate Fate, err error) {
+	if b.barred {
+		switch gone, err := b.isRemoved(p.Occurrence.Source, p.ID); {
+		case err != nil:
+			return 0, 0, err
+		case gone:
+			return 0, Barred, nil
+		}
+	}
+	key = b.insert(p, mapName) // most are new: try that first
+	if b.err != nil || key != 0 {
+		b.parts(key, p)
+		return key, Stored, b.err
+	}
 	find, err := b.stmt("SELECT key, hash FROM occurrence WHERE source = ? AND id = ?")
 	if err != nil {
 		return 0, 0, err
 	}
 	var hash []byte
-	switch err := find.QueryRowContext(b.ctx, p.Occurrence.Source, p.ID).Scan(&key, &hash); {
-	case errors.Is(err, sql.ErrNoRows):
-		if b.barred {
-			switch gone, err := b.isRemoved(p.Occurrence.Source, p.ID); {
-			case err != nil:
-				return 0, 0, err
-			case gone:
-				return 0, Barred, nil
-			}
-		}
-		key, fate = b.insert(p, mapName), Stored
-	case err != nil:
+	if err := find.QueryRowContext(b.ctx, p.Occurrence.Source, p.ID).Scan(&key, &hash); err != nil {
 		return 0, 0, fmt.Errorf("look up %s %s: %w", p.Occurrence.Source, p.ID, explain(err))
-	case bytes.Equal(hash, p.Hash[:]):
-		return key, Unchanged, b.err
-	default:
-		known, err := b.hadContent(key, p.Hash)
-		if err != nil || known {
-			return key, Unchanged, err
-		}
-		fate = Revised
-		b.revise(key, p, mapName)
 	}
+	if bytes.Equal(hash, p.Hash[:]) {
+		return key, Unchanged, b.err
+	}
+	known, err := b.hadContent(key, p.Hash)
+	if err != nil || known {
+		return key, Unchanged, err
+	}
+	fate = Revised
+	b.revise(key, p, mapName)
 	b.parts(key, p)
 	return key, fate, b.err
 }
@@ -208,10 +211,17 @@ func (b *Batch) columns(p *Put, mapName string) []any {
 const columnNames = `date, place, country, make, model, category, engines, engine_type, operation,
 	phase, injury, damage, event, rest, kinds, usable, cut_off, hash, file, row, line, change, rulebook, source, id`
 
+// insertOccurrence stores a reference that is not there yet.
+var insertOccurrence = "INSERT INTO occurrence (" + columnNames + ") VALUES (?" + strings.Repeat(", ?", 24) + ") ON CONFLICT (source, id) DO NOTHING"
+
+// insert returns the key of the new occurrence, 0 where the reference is there.
 func (b *Batch) insert(p *Put, mapName string) int64 {
-	args := b.columns(p, mapName)
-	res := b.exec("INSERT INTO occurrence ("+columnNames+") VALUES (?"+strings.Repeat(", ?", 24)+")", args...)
+	res := b.exec(insertOccurrence, b.columns(p, mapName)...)
 	if b.err != nil {
+		return 0
+	}
+	if n, err := res.RowsAffected(); err != nil || n == 0 {
+		b.change--
 		return 0
 	}
 	key, err := res.LastInsertId()
@@ -235,15 +245,20 @@ func (b *Batch) revise(key int64, p *Put, mapName string) {
 	}
 	b.exec(`INSERT INTO revision SELECT o.key, (SELECT count(*) FROM revision WHERE occurrence = o.key), o.hash, ?, r.bytes, o.file, o.row, o.line
 		FROM occurrence o JOIN raw r ON r.occurrence = o.key WHERE o.key = ?`, record, key)
-	for _, table := range []string{"narrative", "raw", "tag", "chain"} {
+	b.exec("DELETE FROM narrative WHERE "+narrativesOf, key)
+	for _, table := range []string{"raw", "tag", "chain"} {
 		b.exec("DELETE FROM "+table+" WHERE occurrence = ?", key)
 	}
 	args := append(b.columns(p, mapName), key)
 	b.exec("UPDATE occurrence SET ("+columnNames+") = (?"+strings.Repeat(", ?", 24)+") WHERE key = ?", args...)
 }
 
-// maxNarratives is what the narrative key leaves room for.
+// maxNarratives is what the narrative key leaves room for: the key of an
+// occurrence times this, plus the number of the narrative.
 const maxNarratives = 256
+
+// narrativesOf finds the narratives of the occurrence whose key is ?1.
+const narrativesOf = "key BETWEEN ?1 * 256 AND ?1 * 256 + 255"
 
 func (b *Batch) parts(key int64, p *Put) {
 	if len(p.Narratives) > maxNarratives {
